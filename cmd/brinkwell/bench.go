@@ -1,0 +1,190 @@
+package main
+
+import (
+	"bytes"
+	"context"
+	"fmt"
+	"io"
+	"os"
+	"os/signal"
+	"syscall"
+	"time"
+
+	"github.com/pelletier/go-toml/v2"
+	"github.com/schollz/progressbar/v3"
+	"github.com/spf13/cobra"
+	"golang.org/x/term"
+
+	"brinkwell/controller/trial"
+	"brinkwell/io/settings"
+	"brinkwell/plant/motion"
+)
+
+// benchFlags are the flags of bench.
+type benchFlags struct {
+	set          []string
+	json         string
+	showSettings bool
+	beyondRange  bool
+}
+
+func benchCommand(sh shell) *cobra.Command {
+	var f benchFlags
+	c := &cobra.Command{
+		Use:   "bench [SETTINGS.toml]",
+		Short: "close the loop on a simulated resonator and state the potential that it makes",
+		Long: `bench closes the threshold-switched loop on a simulated, thermally driven
+resonator, in virtual time, and states with 95 % intervals what double well it
+made, beside what was asked. Without a settings file it runs the built-in demo.
+
+Settings are layered, later wins: the built-in demo, the file, the environment
+(BRINKWELL_SET_RESONATOR_QUALITY=50), --set resonator.quality=50. What each key
+means stands in the file that --show-settings prints.
+
+The exit code is 1 when the realised barrier or temperature is outside
+[tolerance]. Ctrl-C ends the run with a report of what was measured so far.`,
+		Example: `  brinkwell bench
+  brinkwell bench --set loop.latency=3us --set resonator.quality=200
+  brinkwell bench --show-settings > my-bench.toml
+  brinkwell bench my-bench.toml --json report.json`,
+		Args: cobra.MaximumNArgs(1),
+		RunE: func(_ *cobra.Command, args []string) error {
+			file := ""
+			if len(args) == 1 {
+				file = args[0]
+			}
+			return bench(sh, file, f)
+		},
+	}
+	c.Flags().StringArrayVar(&f.set, "set", nil, "set one `KEY=VALUE`, such as loop.latency=3us; may be repeated")
+	c.Flags().StringVar(&f.json, "json", "", "write the report as JSON to `FILE`; - for standard output, the text then goes to standard error")
+	c.Flags().BoolVar(&f.showSettings, "show-settings", false, "print the resolved settings as a file that can be used again, and run nothing")
+	c.Flags().BoolVar(&f.beyondRange, "beyond-range", false, "allow a latency above 1/8 of a period, where the loop may oscillate by itself")
+	return c
+}
+
+// bench runs one bench and prints its report.
+func bench(sh shell, file string, f benchFlags) error {
+	s, err := settings.Load(settings.Sources{File: file, Environ: sh.environ, Set: f.set, BeyondRange: f.beyondRange})
+	if err != nil {
+		return &exitError{exitUsage, err}
+	}
+	if f.showSettings {
+		if err := s.WriteTOML(sh.out); err != nil {
+			return &exitError{exitWrite, err}
+		}
+		return nil
+	}
+	t, err := trial.New(trialConfig(s))
+	if err != nil {
+		return &exitError{exitUsage, err}
+	}
+	notes := append(s.Warnings(), t.Warnings()...)
+	for _, n := range notes {
+		fmt.Fprintf(sh.err, "note: %s\n", n)
+	}
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
+	defer stop()
+	// A second Ctrl-C ends the program at once.
+	context.AfterFunc(ctx, stop)
+	progress, finish := terminalProgress(sh.err)
+	report, err := t.Run(ctx, progress)
+	finish()
+	if err != nil {
+		return &exitError{exitFailed, err}
+	}
+	report.Notes = append(notes, report.Notes...)
+	if report.Settings, err = settingsTable(s); err != nil {
+		return &exitError{exitFailed, err}
+	}
+	text := sh.out
+	if f.json == "-" {
+		text = sh.err
+	}
+	printed := printReport(text, report, isTerminal(text))
+	if f.json != "" {
+		if err := writeJSON(sh.out, f.json, report); err != nil {
+			return &exitError{exitWrite, err}
+		}
+	}
+	switch {
+	case printed != nil:
+		return &exitError{exitWrite, fmt.Errorf("printing the report: %w", printed)}
+	case !report.Verdict.Passes && !report.Interrupted:
+		return &exitError{code: exitTolerance}
+	}
+	return nil
+}
+
+// trialConfig hands the settings on as plain values.
+func trialConfig(s settings.Settings) trial.Config {
+	return trial.Config{
+		Oscillator: motion.Oscillator{
+			Omega0:    s.Omega0(),
+			Quality:   float64(s.Resonator.Quality),
+			Stiffness: float64(s.Resonator.Stiffness),
+			KT:        s.KT(),
+		},
+		Temperature:  float64(s.Resonator.Temperature),
+		HalfDistance: s.HalfDistance(),
+		Threshold:    s.ThresholdM(),
+		Rate:         float64(s.Loop.Rate),
+		HalfBand:     float64(s.Loop.HalfBand),
+		Latency:      float64(s.Loop.Latency),
+		NoiseDensity: float64(s.Sensor.Noise),
+		Duration:     float64(s.Run.Duration),
+		WarmUp:       float64(s.Run.WarmUp),
+		Seed:         uint64(s.Run.Seed),
+		Tolerance: trial.Tolerance{
+			Barrier:     float64(s.Tolerance.Barrier),
+			Temperature: float64(s.Tolerance.Temperature),
+		},
+	}
+}
+
+// settingsTable returns the resolved settings as their file has them.
+func settingsTable(s settings.Settings) (map[string]any, error) {
+	var file bytes.Buffer
+	if err := s.WriteTOML(&file); err != nil {
+		return nil, err
+	}
+	table := map[string]any{}
+	return table, toml.Unmarshal(file.Bytes(), &table)
+}
+
+// terminalProgress returns a progress bar on a terminal, and nothing
+// elsewhere. finish clears it.
+func terminalProgress(w io.Writer) (progress trial.Progress, finish func()) {
+	if !isTerminal(w) {
+		return nil, func() {}
+	}
+	var bar *progressbar.ProgressBar
+	var shown time.Time
+	progress = func(done, total int64) {
+		if bar == nil {
+			bar = progressbar.NewOptions64(total,
+				progressbar.OptionSetWriter(w),
+				progressbar.OptionSetDescription("bench"),
+				progressbar.OptionShowIts(),
+				progressbar.OptionSetItsString("ticks"),
+				progressbar.OptionSetWidth(30),
+				progressbar.OptionClearOnFinish(),
+			)
+		}
+		// A block takes some 20 µs: most of them are not worth a look.
+		if now := time.Now(); now.Sub(shown) > 100*time.Millisecond || done == total {
+			shown = now
+			_ = bar.Set64(done) // a bar that cannot be drawn is no reason to stop
+		}
+	}
+	return progress, func() {
+		if bar != nil {
+			_ = bar.Clear()
+		}
+	}
+}
+
+func isTerminal(w io.Writer) bool {
+	f, ok := w.(*os.File)
+	return ok && term.IsTerminal(int(f.Fd()))
+}

@@ -1,0 +1,81 @@
+package main
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"brinkwell/controller/estimate"
+)
+
+// prefixed units take an SI prefix when printed; the others do not.
+var prefixed = map[string]bool{"m": true, "s": true, "N/m": true, "Hz": true, "1/m": false}
+
+var prefixes = []struct {
+	factor float64
+	symbol string
+}{{1e-15, "f"}, {1e-12, "p"}, {1e-9, "n"}, {1e-6, "µ"}, {1e-3, "m"}, {1, ""}, {1e3, "k"}, {1e6, "M"}, {1e9, "G"}}
+
+// scaled returns the factor and the unit in which a value reads well.
+func scaled(value float64, unit string) (factor float64, name string) {
+	factor = 1
+	if !prefixed[unit] {
+		return factor, unit
+	}
+	name = unit
+	for _, p := range prefixes {
+		if math.Abs(value) >= p.factor*(1-1e-9) {
+			factor, name = p.factor, p.symbol+unit
+		}
+	}
+	return factor, name
+}
+
+// quantity prints a number with its unit, to five digits.
+func quantity(value float64, unit string) string {
+	factor, name := scaled(value, unit)
+	return strings.TrimSuffix(fmt.Sprintf("%.5g %s", value/factor, name), " ")
+}
+
+// interval prints an estimate with its 95 % interval: value ± half, or the
+// ends of an interval that is lopsided, to two digits of the half. An estimate
+// that there is not is a dash; its reason is said elsewhere.
+func interval(v estimate.Value, unit string) string {
+	if !v.Known() {
+		return "—"
+	}
+	factor, name := scaled(math.Max(math.Abs(v.Value), v.Half()), unit)
+	if v.Value == 0 && v.Half() == 0 {
+		factor, name = 1, unit
+	}
+	half := v.Half() / factor
+	exponent := 0 // everything in powers of ten where plain digits would be many
+	if size := math.Abs(v.Value) / factor; size >= 1e5 {
+		exponent = int(math.Floor(math.Log10(size)))
+		factor *= math.Pow10(exponent)
+		half = v.Half() / factor
+	}
+	decimals := 3
+	if half > 0 {
+		decimals = max(0, 1-int(math.Floor(math.Log10(half))))
+	}
+	power := ""
+	if exponent != 0 {
+		power = fmt.Sprintf("e%d", exponent)
+	}
+	up, down := v.High-v.Value, v.Value-v.Low
+	if math.Abs(up-down) > 0.1*v.Half() {
+		return strings.TrimSuffix(fmt.Sprintf("%.*f%s (%.*f … %.*f) %s", decimals, v.Value/factor, power,
+			decimals, v.Low/factor, decimals, v.High/factor, name), " ")
+	}
+	return strings.TrimSuffix(fmt.Sprintf("%.*f ± %.*f%s %s", decimals, v.Value/factor, decimals, half, power, name), " ")
+}
+
+// expectation prints what theory expects, or a dash outside its range.
+func expectation(value float64, inside bool, unit string) string {
+	if !inside {
+		return "—"
+	}
+	factor, name := scaled(value, unit)
+	return strings.TrimSuffix(fmt.Sprintf("%.3g %s", value/factor, name), " ")
+}

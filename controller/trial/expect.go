@@ -1,0 +1,74 @@
+package trial
+
+import (
+	"fmt"
+	"math"
+
+	"brinkwell/controller/theory"
+)
+
+// Predicted is what theory expects of the bench, with its range of validity.
+type Predicted struct {
+	Regime             string   `json:"regime"`
+	InsideRange        bool     `json:"inside_range"`
+	OutsideBecause     []string `json:"outside_because"`
+	KineticTemperature float64  `json:"kinetic_temperature_ratio"`
+	UpperShare         float64  `json:"upper_share"`
+	Count              float64  `json:"count"` // actuations in the run
+	Rate               float64  `json:"rate_per_s"`
+	SettledCount       float64  `json:"settled_count"`
+	SettledRate        float64  `json:"settled_rate_per_s"`
+	Overshoot          float64  `json:"overshoot_m"`
+	Energy             float64  `json:"energy_kT"`
+	Power              float64  `json:"power_kT_per_s"`
+	RatesInsideRange   bool     `json:"rates_inside_range"` // of SettledRate
+	RatesOutside       []string `json:"rates_outside_because"`
+}
+
+// predict returns what theory expects. A bench that no theory covers is no
+// error: it can still be simulated, and the prediction says why it has none.
+func (c Config) predict() *Predicted {
+	p, err := theory.Predict(c.Case())
+	if err != nil {
+		return &Predicted{Regime: "none", OutsideBecause: []string{err.Error()}, RatesOutside: []string{err.Error()}}
+	}
+	w0, sigma := c.Oscillator.Omega0, c.sigma()
+	return &Predicted{
+		Regime:             string(p.Regime),
+		InsideRange:        p.Range.Inside(),
+		OutsideBecause:     append([]string{}, p.Range.Reasons...),
+		KineticTemperature: p.Temperature,
+		UpperShare:         p.UpperOccupation,
+		Count:              p.SwitchRate * w0 * c.Duration,
+		Rate:               p.SwitchRate * w0,
+		SettledCount:       p.SettledRate * w0 * c.Duration,
+		SettledRate:        p.SettledRate * w0,
+		Overshoot:          p.Overshoot * sigma,
+		Energy:             p.EnergyPerSwitch,
+		Power:              p.Power * w0,
+		RatesInsideRange:   p.RatesRange.Inside(),
+		RatesOutside:       append([]string{}, p.RatesRange.Reasons...),
+	}
+}
+
+// fewCrossings is where a run shows too little of the density at the threshold
+// to estimate from it.
+const fewCrossings = 10
+
+// Warnings says what a person should know before the bench runs.
+func (t *Trial) Warnings() []string {
+	var w []string
+	c, p := t.config, t.predicted
+	if p.Regime != "none" && p.Count < fewCrossings {
+		w = append(w, fmt.Sprintf(
+			"only %.2g crossings are expected in the run of %.4g s: the barrier of %.3g kT will rest on the fitted parabolas, and rates and dwell times may have no estimate; %.2g s would show about %d crossings",
+			p.Count, c.Duration, c.barrier(), c.Duration*fewCrossings/p.Count, fewCrossings))
+	}
+	off := p.KineticTemperature - 1
+	if p.InsideRange && math.Abs(off) > c.Tolerance.Temperature {
+		w = append(w, fmt.Sprintf(
+			"the expected temperature is %.3f of the bath's, outside the tolerance of ±%g %%: the loop is too late or its band too wide for it (latency %.3g s, half band %.3g m)",
+			p.KineticTemperature, 100*c.Tolerance.Temperature, c.Latency, c.HalfBand))
+	}
+	return w
+}

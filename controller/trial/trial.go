@@ -1,0 +1,172 @@
+// Package trial assembles one bench from plain values, runs it and makes its
+// report.
+//
+// It knows loops, plants, effects and predictions; where the values come from
+// and where the report goes is its users' matter.
+package trial
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"time"
+
+	"brinkwell/controller"
+	"brinkwell/controller/effect"
+	"brinkwell/controller/switching"
+	"brinkwell/controller/theory"
+	"brinkwell/controller/trace"
+	"brinkwell/plant"
+	"brinkwell/plant/motion"
+)
+
+// A Config is one bench, in SI units. Zero means none for every imperfection.
+type Config struct {
+	Oscillator   motion.Oscillator
+	Temperature  float64 // of the bath, K; for the report, the energy is Oscillator.KT
+	HalfDistance float64 // from the midpoint to either well, m
+	Threshold    float64 // from the midpoint, m
+	Rate         float64 // ticks, 1/s
+	HalfBand     float64 // half the comparator's dead band, m
+	Latency      float64 // from a sample to the actuation that it decides, s
+	NoiseDensity float64 // of the sensor, one-sided, m/√Hz
+	Duration     float64 // measured, without WarmUp, s
+	WarmUp       float64 // s
+	Seed         uint64
+	Tolerance    Tolerance
+}
+
+// A Tolerance is what the realised potential may be off, relative to what was
+// asked.
+type Tolerance struct {
+	Barrier     float64
+	Temperature float64
+}
+
+// SensorNoise is the standard deviation of one sample, m: white noise of a
+// one-sided density without a bandwidth, sampled, is folded into half the
+// rate.
+func (c Config) SensorNoise() float64 { return c.NoiseDensity * math.Sqrt(c.Rate/2) }
+
+// Ticks is the measured number of ticks.
+func (c Config) Ticks() int64 { return int64(math.Round(c.Duration * c.Rate)) }
+
+// warmUpTicks come before the measured ones.
+func (c Config) warmUpTicks() int64 { return int64(math.Ceil(c.WarmUp * c.Rate)) }
+
+// sigma is the thermal width of one well, m.
+func (c Config) sigma() float64 { return math.Sqrt(c.Oscillator.KT / c.Oscillator.Stiffness) }
+
+// barrier is that of the untilted wells, kT.
+func (c Config) barrier() float64 {
+	a := c.HalfDistance / c.sigma()
+	return a * a / 2
+}
+
+// Case is the bench in the reduced units of the predictions.
+func (c Config) Case() theory.Case {
+	w0 := c.Oscillator.Omega0
+	return theory.Case{
+		Quality:  c.Oscillator.Quality,
+		Barrier:  c.barrier(),
+		Offset:   c.Threshold / c.sigma(),
+		Delay:    (c.Latency + 0.5/c.Rate) * w0,
+		HalfBand: c.HalfBand / c.sigma(),
+		Noise:    c.SensorNoise() / c.sigma(),
+		Tick:     w0 / c.Rate,
+	}
+}
+
+// A Trial is a bench that is ready to run once. It must be made by New.
+type Trial struct {
+	config    Config
+	loop      *controller.Loop
+	observer  *effect.Observer
+	predicted *Predicted
+}
+
+// New assembles a bench.
+func New(c Config) (*Trial, error) {
+	if c.Ticks() < 1 {
+		return nil, fmt.Errorf("trial: a duration of %g s at %g Hz is less than one tick", c.Duration, c.Rate)
+	}
+	p, err := plant.New(plant.Config{
+		Oscillator:  c.Oscillator,
+		Rate:        c.Rate,
+		Centres:     [trace.Levels]float64{trace.Lower: -c.HalfDistance, trace.Upper: c.HalfDistance},
+		Threshold:   c.Threshold,
+		Latency:     c.Latency,
+		SensorNoise: c.SensorNoise(),
+		Seed:        c.Seed,
+	})
+	if err != nil {
+		return nil, err
+	}
+	observer, err := effect.New(effect.Reference{
+		Rate:         c.Rate,
+		Oscillator:   c.Oscillator,
+		HalfDistance: c.HalfDistance,
+		Threshold:    c.Threshold,
+		SensorNoise:  c.SensorNoise(),
+	})
+	if err != nil {
+		return nil, err
+	}
+	loop := controller.New(controller.Config{
+		Sensor:     p,
+		Actuator:   p,
+		Comparator: switching.Comparator{Threshold: c.Threshold, HalfBand: c.HalfBand},
+		Truth:      true,
+		First:      -c.warmUpTicks(),
+	})
+	return &Trial{config: c, loop: loop, observer: observer, predicted: c.predict()}, nil
+}
+
+// Progress is told of the ticks done, warm-up included, and their total.
+type Progress func(done, total int64)
+
+// Run warms up, measures and reports. When ctx ends it reports what there is,
+// Report.Interrupted set; an error means that there is no report.
+func (t *Trial) Run(ctx context.Context, progress Progress, sinks ...trace.Sink) (Report, error) {
+	c := t.config
+	warm, ticks := c.warmUpTicks(), c.Ticks()
+	p := &progressSink{tell: progress, total: warm + ticks}
+	if progress == nil {
+		p.tell = func(int64, int64) {}
+	}
+	interrupted := false
+	if _, err := t.loop.Run(ctx, warm, p); errors.Is(err, context.Canceled) {
+		interrupted = true
+	} else if err != nil {
+		return Report{}, err
+	}
+	start := time.Now()
+	all := append([]trace.Sink{t.observer, p}, sinks...)
+	var done int64
+	if !interrupted {
+		var err error
+		done, err = t.loop.Run(ctx, ticks, all...)
+		if errors.Is(err, context.Canceled) {
+			interrupted = true
+		} else if err != nil {
+			return Report{}, err
+		}
+	}
+	wall := time.Since(start)
+	r := t.report(done, wall)
+	r.Interrupted = interrupted
+	return r, nil
+}
+
+// progressSink tells how far a run is.
+type progressSink struct {
+	tell        Progress
+	done, total int64
+}
+
+func (p *progressSink) Take(b *trace.Block) error {
+	p.done += int64(len(b.Samples))
+	p.tell(p.done, p.total)
+	return nil
+}
