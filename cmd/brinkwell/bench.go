@@ -79,8 +79,7 @@ func bench(sh shell, file string, f benchFlags) error {
 	if err != nil {
 		return &exitError{exitUsage, err}
 	}
-	notes := append(s.Warnings(), t.Warnings()...)
-	for _, n := range notes {
+	for _, n := range append(s.Warnings(), t.Warnings()...) {
 		fmt.Fprintf(sh.err, "note: %s\n", n)
 	}
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
@@ -93,7 +92,7 @@ func bench(sh shell, file string, f benchFlags) error {
 	if err != nil {
 		return &exitError{exitFailed, err}
 	}
-	report.Notes = append(notes, report.Notes...)
+	report.Notes = append(s.Warnings(), report.Notes...)
 	if report.Settings, err = settingsTable(s); err != nil {
 		return &exitError{exitFailed, err}
 	}

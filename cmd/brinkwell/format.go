@@ -8,8 +8,9 @@ import (
 	"brinkwell/controller/estimate"
 )
 
-// prefixed units take an SI prefix when printed; the others do not.
-var prefixed = map[string]bool{"m": true, "s": true, "N/m": true, "Hz": true, "1/m": false}
+// prefixed units take an SI prefix when printed, 1/m an inverse one; the
+// others do not.
+var prefixed = map[string]bool{"m": true, "s": true, "N/m": true, "Hz": true, "1/m": true}
 
 var prefixes = []struct {
 	factor float64
@@ -19,12 +20,16 @@ var prefixes = []struct {
 // scaled returns the factor and the unit in which a value reads well.
 func scaled(value float64, unit string) (factor float64, name string) {
 	factor = 1
-	if !prefixed[unit] {
+	if !prefixed[unit] || value == 0 {
 		return factor, unit
 	}
 	name = unit
+	base, inverse := strings.CutPrefix(unit, "1/")
 	for _, p := range prefixes {
-		if math.Abs(value) >= p.factor*(1-1e-9) {
+		switch size := math.Abs(value) * (1 + 1e-9); {
+		case inverse && size*p.factor >= 1:
+			return 1 / p.factor, "1/" + p.symbol + base
+		case !inverse && size >= p.factor:
 			factor, name = p.factor, p.symbol+unit
 		}
 	}
@@ -45,30 +50,17 @@ func interval(v estimate.Value, unit string) string {
 		return "—"
 	}
 	factor, name := scaled(math.Max(math.Abs(v.Value), v.Half()), unit)
-	if v.Value == 0 && v.Half() == 0 {
-		factor, name = 1, unit
-	}
 	half := v.Half() / factor
-	exponent := 0 // everything in powers of ten where plain digits would be many
-	if size := math.Abs(v.Value) / factor; size >= 1e5 {
-		exponent = int(math.Floor(math.Log10(size)))
-		factor *= math.Pow10(exponent)
-		half = v.Half() / factor
-	}
 	decimals := 3
 	if half > 0 {
 		decimals = max(0, 1-int(math.Floor(math.Log10(half))))
 	}
-	power := ""
-	if exponent != 0 {
-		power = fmt.Sprintf("e%d", exponent)
-	}
 	up, down := v.High-v.Value, v.Value-v.Low
 	if math.Abs(up-down) > 0.1*v.Half() {
-		return strings.TrimSuffix(fmt.Sprintf("%.*f%s (%.*f … %.*f) %s", decimals, v.Value/factor, power,
+		return strings.TrimSuffix(fmt.Sprintf("%.*f (%.*f … %.*f) %s", decimals, v.Value/factor,
 			decimals, v.Low/factor, decimals, v.High/factor, name), " ")
 	}
-	return strings.TrimSuffix(fmt.Sprintf("%.*f ± %.*f%s %s", decimals, v.Value/factor, decimals, half, power, name), " ")
+	return strings.TrimSuffix(fmt.Sprintf("%.*f ± %.*f %s", decimals, v.Value/factor, decimals, half, name), " ")
 }
 
 // expectation prints what theory expects, or a dash outside its range.
@@ -77,5 +69,5 @@ func expectation(value float64, inside bool, unit string) string {
 		return "—"
 	}
 	factor, name := scaled(value, unit)
-	return strings.TrimSuffix(fmt.Sprintf("%.3g %s", value/factor, name), " ")
+	return strings.TrimSuffix(fmt.Sprintf("%.4g %s", value/factor, name), " ")
 }

@@ -78,13 +78,13 @@ func printCrossings(w io.Writer, r trial.Report) {
 	row := func(name string, v estimate.Value, expected float64, inside bool, unit string) {
 		fmt.Fprintf(tw, "  %s\t%s\t%s\n", name, interval(v, unit), expectation(expected, inside, unit))
 	}
-	inside := p.InsideRange
+	inside, rates := p.InsideRange, p.InsideRange && p.RatesInsideRange
 	fmt.Fprintf(tw, "  actuations of a new level\t%d\t%s\n", c.Count, expectation(math.Round(p.Count), inside, ""))
 	row("  rate", c.Rate, p.Rate, inside, "1/s")
-	row("settled transitions, rate", c.SettledRate, p.SettledRate, p.RatesInsideRange, "1/s")
-	row("mean dwell, lower well", c.MeanDwellLower, 0, false, "s")
-	row("mean dwell, upper well", c.MeanDwellUpper, 0, false, "s")
-	row("chatter, share of actuations", c.ChatterFraction, 0, false, "")
+	row("settled transitions, rate", c.SettledRate, p.SettledRate, rates, "1/s")
+	row("mean dwell, lower well", c.MeanDwellLower, p.MeanDwellLower, rates, "s")
+	row("mean dwell, upper well", c.MeanDwellUpper, p.MeanDwellUpper, rates, "s")
+	row("chatter, share of actuations", c.ChatterFraction, p.ChatterFraction, rates, "")
 	row("overshoot", c.Overshoot, p.Overshoot, inside, "m")
 	row("energy per crossing", c.Energy, p.Energy, inside, "kT")
 	row("power of the loop", c.Power, p.Power, inside, "kT/s")
@@ -93,41 +93,54 @@ func printCrossings(w io.Writer, r trial.Report) {
 	for _, why := range p.OutsideBecause {
 		fmt.Fprintf(w, "  no expectation: %s\n", why)
 	}
+	if inside {
+		for _, why := range p.RatesOutside {
+			fmt.Fprintf(w, "  no expectation of settled transitions: %s\n", why)
+		}
+	}
 	fmt.Fprintln(w)
 	reasons(w, []named{
 		{"settled rate", c.SettledRate},
 		{"dwell in the lower well", c.MeanDwellLower},
 		{"dwell in the upper well", c.MeanDwellUpper},
 		{"overshoot", c.Overshoot},
+		{"power of the loop", c.Power},
 	})
 }
 
 func printChecks(w io.Writer, r trial.Report) {
 	i := r.Checks.StationaryIdentity
-	fmt.Fprintf(w, "check: T_kin/T = 1 + Q·P/(omega0·kT)   %s = %s   ", interval(i.Kinetic, ""), interval(i.FromPower, ""))
-	switch {
-	case !i.Difference.Known():
+	fmt.Fprintf(w, "check: T_kin/T = 1 + Q·P/(omega0·kT) in a stationary state: ")
+	if !i.Difference.Known() {
 		fmt.Fprintf(w, "cannot be checked: %s\n", i.Difference.Reason)
-	case i.Holds:
-		fmt.Fprintf(w, "holds, %.1f standard errors apart\n", math.Abs(i.Sigmas))
-	default:
-		fmt.Fprintf(w, "does NOT hold, %.1f standard errors apart: do not trust this run\n", math.Abs(i.Sigmas))
+	} else {
+		if i.Kinetic.Known() && i.FromPower.Known() {
+			fmt.Fprintf(w, "%s and %s, ", interval(i.Kinetic, ""), interval(i.FromPower, ""))
+		}
+		verdict := "holds"
+		if !i.Holds {
+			verdict = "does NOT hold: do not trust this run"
+		}
+		fmt.Fprintf(w, "apart by %s (%.1f standard errors): %s\n", interval(i.Difference, ""), math.Abs(i.Sigmas), verdict)
 	}
-	latency := "no actuation"
+	realised := "none realised, no actuation"
 	if r.Loop.LatencyMean != nil {
-		latency = quantity(*r.Loop.LatencyMean, "s")
+		realised = quantity(*r.Loop.LatencyMean, "s") + " realised on average"
 	}
-	fmt.Fprintf(w, "loop: latency %s asked, %s realised on average; %.3g ticks a second of wall time\n\n",
-		quantity(r.Loop.LatencyAsked, "s"), latency, r.Loop.TicksPerWallSecond)
+	fmt.Fprintf(w, "loop: latency %s asked, %s; %.3g ticks a second of wall time\n\n",
+		quantity(r.Loop.LatencyAsked, "s"), realised, r.Loop.TicksPerWallSecond)
 }
 
 func printVerdict(w io.Writer, r trial.Report) {
 	v := r.Verdict
 	fmt.Fprintf(w, "\nbarrier, from the %s: %s\n", v.Barrier.From, v.Barrier)
 	fmt.Fprintf(w, "temperature, from the %s: %s\n", v.Temperature.From, v.Temperature)
-	if v.Passes {
+	switch {
+	case v.Passes:
 		fmt.Fprintln(w, "verdict: the potential is within its tolerance")
-	} else {
+	case v.Barrier.Judged && v.Temperature.Judged:
+		fmt.Fprintln(w, "verdict: the potential is NOT within its tolerance")
+	default:
 		fmt.Fprintln(w, "verdict: the potential is NOT shown to be within its tolerance")
 	}
 }

@@ -88,6 +88,11 @@ func (o *Observer) crossings(rows [][]float64, total []float64) (Crossings, Iden
 			v[k] = estimate.Unknown("only %d actuations in the run", raw)
 		}
 	}
+	if raw == 0 {
+		for _, k := range []int{power, balancePower} {
+			v[k] = estimate.Unknown("no actuation in the run")
+		}
+	}
 	seconds := whole[sumTicks] / o.ref.Rate
 	c := Crossings{
 		Count: raw, Rate: counted(v[rawRate], raw, seconds), SettledCount: settled, SettledRate: counted(v[settledRate], settled, seconds),

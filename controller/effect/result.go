@@ -87,6 +87,12 @@ func (o *Observer) landscape(rows [][]float64, total []float64, measured bool) L
 			v[k] = estimate.Unknown("%s", reason)
 		}
 	}
+	if whole[density] == 0 {
+		v[density] = estimate.Unknown("no tick of the run fell within %g sigma of the threshold", Window)
+	}
+	if whole[share] == 0 || whole[share] == 1 {
+		v[share] = estimate.Unknown("only one side of the threshold was visited in the run")
+	}
 	const oneSided = "only one side of the threshold was visited long enough"
 	why(barrier, "the threshold was not crossed often enough to show the density there; see the barrier from the parabolas")
 	for side := range trace.Level(trace.Levels) {

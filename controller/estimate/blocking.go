@@ -74,7 +74,14 @@ func Mean(series []float64) Value {
 		return normal(stat.Mean(series, nil), b.StandardError*math.Sqrt(factor), n/3)
 	}
 	if len(series) < fewestBlocks {
-		return Unknown("only %d stretches of the run, at least %d are needed for an interval", len(series), fewestBlocks)
+		return tooFew(len(series))
 	}
-	return Unknown("the run is too short: it spans only a few correlation times of this quantity")
+	quarter := len(series) / 4
+	return Unknown("the run is too short for it, or not stationary: its quarters give %.3g, %.3g, %.3g and %.3g",
+		stat.Mean(series[:quarter], nil), stat.Mean(series[quarter:2*quarter], nil),
+		stat.Mean(series[2*quarter:3*quarter], nil), stat.Mean(series[3*quarter:], nil))
+}
+
+func tooFew(stretches int) Value {
+	return Unknown("the run is too short for an interval: %d of the %d stretches that it takes", stretches, fewestBlocks)
 }

@@ -2,6 +2,7 @@ package estimate
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/floats"
 )
@@ -33,7 +34,7 @@ func Jackknife(rows [][]float64, n int, f Function) []Value {
 	values := make([]Value, n)
 	if len(rows) < fewestBlocks {
 		for k := range values {
-			values[k] = Unknown("only %d stretches of the run, at least %d are needed for an interval", len(rows), fewestBlocks)
+			values[k] = tooFew(len(rows))
 		}
 		return values
 	}
@@ -68,6 +69,9 @@ func jackknifed(whole float64, pseudo []float64) Value {
 		if math.IsNaN(p) || math.IsInf(p, 0) {
 			return Unknown("it rests on one short stretch of the run alone")
 		}
+	}
+	if slices.Min(pseudo) == slices.Max(pseudo) {
+		return Unknown("it did not vary over the run, which gives no interval")
 	}
 	return Mean(pseudo)
 }

@@ -3,6 +3,7 @@ package trial
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"brinkwell/controller/theory"
 )
@@ -18,10 +19,13 @@ type Predicted struct {
 	Rate               float64  `json:"rate_per_s"`
 	SettledCount       float64  `json:"settled_count"`
 	SettledRate        float64  `json:"settled_rate_per_s"`
+	MeanDwellLower     float64  `json:"mean_dwell_lower_s"`
+	MeanDwellUpper     float64  `json:"mean_dwell_upper_s"`
+	ChatterFraction    float64  `json:"chatter_fraction"`
 	Overshoot          float64  `json:"overshoot_m"`
 	Energy             float64  `json:"energy_kT"`
 	Power              float64  `json:"power_kT_per_s"`
-	RatesInsideRange   bool     `json:"rates_inside_range"` // of SettledRate
+	RatesInsideRange   bool     `json:"rates_inside_range"` // of what rests on SettledRate
 	RatesOutside       []string `json:"rates_outside_because"`
 }
 
@@ -33,7 +37,7 @@ func (c Config) predict() *Predicted {
 		return &Predicted{Regime: "none", OutsideBecause: []string{err.Error()}, RatesOutside: []string{err.Error()}}
 	}
 	w0, sigma := c.Oscillator.Omega0, c.sigma()
-	return &Predicted{
+	e := &Predicted{
 		Regime:             string(p.Regime),
 		InsideRange:        p.Range.Inside(),
 		OutsideBecause:     append([]string{}, p.Range.Reasons...),
@@ -49,6 +53,13 @@ func (c Config) predict() *Predicted {
 		RatesInsideRange:   p.RatesRange.Inside(),
 		RatesOutside:       append([]string{}, p.RatesRange.Reasons...),
 	}
+	if e.SettledRate > 0 && e.Rate > 0 {
+		// Either well is left half as often as there are transitions.
+		e.MeanDwellLower = (1 - e.UpperShare) * 2 / e.SettledRate
+		e.MeanDwellUpper = e.UpperShare * 2 / e.SettledRate
+		e.ChatterFraction = math.Max(0, 1-e.SettledRate/e.Rate)
+	}
+	return e
 }
 
 // fewCrossings is where a run shows too little of the density at the threshold
@@ -65,10 +76,14 @@ func (t *Trial) Warnings() []string {
 			p.Count, c.Duration, c.barrier(), c.Duration*fewCrossings/p.Count, fewCrossings))
 	}
 	off := p.KineticTemperature - 1
-	if p.InsideRange && math.Abs(off) > c.Tolerance.Temperature {
+	if p.Regime != "none" && math.Abs(off) > c.Tolerance.Temperature {
+		trust := ""
+		if !p.InsideRange {
+			trust = " (a rough figure: " + strings.Join(p.OutsideBecause, "; ") + ")"
+		}
 		w = append(w, fmt.Sprintf(
-			"the expected temperature is %.3f of the bath's, outside the tolerance of ±%g %%: the loop is too late or its band too wide for it (latency %.3g s, half band %.3g m)",
-			p.KineticTemperature, 100*c.Tolerance.Temperature, c.Latency, c.HalfBand))
+			"the expected temperature is %.3f of the bath's%s, outside the tolerance of ±%g %%: the loop is too late or its band too wide for it (latency %.3g µs, half band %.3g nm)",
+			p.KineticTemperature, trust, 100*c.Tolerance.Temperature, c.Latency*1e6, c.HalfBand*1e9))
 	}
 	return w
 }
