@@ -69,7 +69,7 @@ func Mean(series []float64) Value {
 		if b.Neighbours > correlated+1/math.Sqrt(n) {
 			continue
 		}
-		kappa := b.Neighbours + 1/n // the estimate from n values is low by 1/n
+		kappa := b.Neighbours + 1/n                  // the estimate from n values is low by 1/n
 		factor := math.Max((1+kappa)/(1-kappa), 0.1) // a stronger anticorrelation is noise
 		return normal(stat.Mean(series, nil), b.StandardError*math.Sqrt(factor), n/3)
 	}
