@@ -82,7 +82,8 @@ func New(c Config) *Loop {
 // Run runs the loop for a number of ticks and hands each block to the sinks.
 // When ctx ends it stops at the end of a block and returns ctx's error with
 // the number of ticks done. When the sensor or the actuator fails, the ticks
-// before the failure still go to the sinks.
+// before the failure still go to the sinks, and a further Run begins with the
+// tick that failed.
 func (l *Loop) Run(ctx context.Context, ticks int64, sinks ...trace.Sink) (done int64, err error) {
 	for done < ticks && err == nil {
 		if err := ctx.Err(); err != nil {
@@ -100,6 +101,9 @@ func (l *Loop) Run(ctx context.Context, ticks int64, sinks ...trace.Sink) (done 
 
 // deliver hands the last n ticks to the sinks.
 func (l *Loop) deliver(n int, sinks []trace.Sink) error {
+	if n == 0 {
+		return nil
+	}
 	b := &l.block
 	b.Start, b.Samples, b.Initial = l.tick-int64(n), b.Samples[:n], l.force
 	b.Events = l.actuator.Acted(b.Events[:0])
@@ -124,10 +128,11 @@ func (l *Loop) run(samples []trace.Sample) (n int, err error) {
 			break
 		}
 		if s.Level = c.Decide(s.Measured); s.Level != level {
-			level = s.Level
-			if err = l.actuator.Actuate(tick, level); err != nil {
+			if err = l.actuator.Actuate(tick, s.Level); err != nil {
+				c.Level = level // not commanded: a later Run decides it anew
 				break
 			}
+			level = s.Level
 		}
 		tick++
 	}

@@ -6,6 +6,8 @@ import (
 	"testing"
 
 	"brinkwell/controller/trace"
+	"brinkwell/plant"
+	"brinkwell/plant/motion"
 )
 
 // moved is how far, and how fast in units of ω₀, an oscillator at rest has
@@ -168,5 +170,36 @@ func TestLevelIsThatInForce(t *testing.T) {
 	}
 	if again := append(p.Acted(nil), p.Acted(nil)...); len(again) != 1 {
 		t.Errorf("two calls of Acted gave %d events, want the one once", len(again))
+	}
+}
+
+// Two levels commanded in one tick: the last holds, and the plant goes on.
+func TestLastCommandOfATickHolds(t *testing.T) {
+	p, err := plant.New(plant.Config{
+		Oscillator: motion.Oscillator{Omega0: 1, Quality: 10, Stiffness: 1, KT: 1},
+		Rate:       20,
+		Centres:    [trace.Levels]float64{-3, 3},
+		Latency:    0.1,
+		Seed:       1,
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var s trace.Sample
+	for tick := range int64(20) {
+		if err := p.Sense(tick, &s); err != nil {
+			t.Fatal(err)
+		}
+		if tick == 5 || tick == 10 {
+			for _, level := range []trace.Level{trace.Lower, trace.Upper, 1 - trace.Level(tick/10)} {
+				if err := p.Actuate(tick, level); err != nil {
+					t.Fatal(err)
+				}
+			}
+		}
+	}
+	events := p.Acted(nil)
+	if len(events) != 2 || events[0].Level != trace.Upper || events[1].Level != trace.Lower {
+		t.Errorf("events %+v, want upper decided at tick 5 and lower at tick 10", events)
 	}
 }

@@ -47,6 +47,15 @@ func TestSensorNoiseIsWhite(t *testing.T) {
 	check("correlation with the position", stat.Correlation(noise, x, nil), 0, 1/root)
 	check("correlation with the velocity", stat.Correlation(noise, v, nil), 0, 1/root)
 	check("correlation with the next tick's kick", stat.Correlation(noise[:n-1], changes(v), nil), 0, 1/root)
+	// A tick takes two thermal variates and one of the sensor: of one stream,
+	// the kicks would have come from the draws of twice their number.
+	for odd := range 2 {
+		twice := make([]float64, n/2-1)
+		for i := range twice {
+			twice[i] = noise[2*i+odd]
+		}
+		check("correlation of equal draws", stat.Correlation(twice, changes(v[:n/2]), nil), 0, 1/math.Sqrt(n/2))
+	}
 }
 
 func changes(v []float64) []float64 {
