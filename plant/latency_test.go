@@ -203,3 +203,48 @@ func TestLastCommandOfATickHolds(t *testing.T) {
 		t.Errorf("events %+v, want upper decided at tick 5 and lower at tick 10", events)
 	}
 }
+
+// An event's measured position lies on the chord between the samples around
+// it, and its work is that of a parabola whose centre jumps,
+// -2·k·x1·s·(x - x0).
+func TestEventMeasuredAndWork(t *testing.T) {
+	const x1, x0, rate = 3.0, 0.4, 20.0
+	p, err := plant.New(plant.Config{
+		Oscillator:  motion.Oscillator{Omega0: 1, Quality: 10, Stiffness: 1.5, KT: 1},
+		Rate:        rate,
+		Centres:     [trace.Levels]float64{-x1, x1},
+		Threshold:   x0,
+		Latency:     1.3 / rate,
+		SensorNoise: 0.5,
+		Seed:        3,
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	samples := make([]trace.Sample, 200)
+	for i := range samples {
+		if err := p.Sense(int64(i), &samples[i]); err != nil {
+			t.Fatal(err)
+		}
+		if i%20 == 10 {
+			if err := p.Actuate(int64(i), trace.Level(i/20%2)); err != nil {
+				t.Fatal(err)
+			}
+		}
+	}
+	level := trace.Level(1) // events alternate from the lower level on; the first may change nothing
+	for _, e := range p.Acted(nil) {
+		before, after := samples[e.Tick].Measured, samples[e.Tick+1].Measured
+		if want := before + 0.3*(after-before); !(math.Abs(e.Measured-want) < 1e-12) {
+			t.Errorf("measured %v between %v and %v, want %v", e.Measured, before, after, want)
+		}
+		want := -2 * 1.5 * x1 * e.Level.Sign() * (e.Position - x0)
+		if e.Tick > 20 && !(math.Abs(e.Work-want) < 1e-12) {
+			t.Errorf("work %v at %v to the %v level, want %v", e.Work, e.Position, e.Level, want)
+		}
+		level = e.Level
+	}
+	if level != trace.Upper {
+		t.Errorf("the last level is %v, want upper", level)
+	}
+}

@@ -81,6 +81,10 @@ type Plant struct {
 	tail    int64     // next free
 	due     int64     // tick of pending[head]; never where there is none
 	acted   []trace.Event
+	open    bool    // whether the last of acted lacks its Measured
+	last    float64 // measured at the tick before, m
+
+	rate, stiffness, threshold float64
 }
 
 // A command is a level on its way.
@@ -111,6 +115,9 @@ func New(c Config) (*Plant, error) {
 		seen:      make([]float64, 512),
 		sd:        c.SensorNoise,
 		due:       never,
+		rate:      c.Rate,
+		stiffness: c.Oscillator.Stiffness,
+		threshold: c.Threshold,
 	}
 	p.next = len(p.seen)
 	p.delay, p.offset = wholeTicks(c.Latency, c.Rate)
@@ -186,7 +193,18 @@ func (p *Plant) Sense(tick int64, s *trace.Sample) error {
 	p.next++
 	s.Position = x
 	s.Velocity = p.resonator.Velocity()
+	if p.open {
+		p.measure(s.Measured)
+	}
+	p.last = s.Measured
 	return nil
+}
+
+// measure completes the last event with what the sensor saw around it.
+func (p *Plant) measure(next float64) {
+	e := &p.acted[len(p.acted)-1]
+	e.Measured = p.last + (next-p.last)*e.Offset*p.rate
+	p.open = false
 }
 
 // look draws the sensor noise of the next ticks.
@@ -215,7 +233,9 @@ func (p *Plant) Actuate(tick int64, level trace.Level) error {
 	return nil
 }
 
-// act steps from a tick to the next one while a pending level acts.
+// act steps from a tick to the next one while a pending level acts. With U
+// continuous at x0 whatever the centre c, dU/dc = -k·(x - x0): a centre that
+// jumps does the work -k·(x - x0)·Δc.
 func (p *Plant) act(tick int64) {
 	mask := int64(len(p.pending) - 1)
 	c := p.pending[p.head&mask]
@@ -232,8 +252,9 @@ func (p *Plant) act(tick int64) {
 		p.resonator.Move(p.centres[c.level])
 		p.resonator.Step(p.bath.Next())
 	}
+	e.Work = -p.stiffness * (e.Position - p.threshold) * (p.centres[c.level] - p.centres[p.level])
 	p.level = c.level
-	p.acted = append(p.acted, e)
+	p.acted, p.open = append(p.acted, e), true
 }
 
 // Acted appends the actuations since its last call to dst.
