@@ -48,7 +48,7 @@ func (o *Observer) crossingsOf(dst, row []float64) {
 	dst[rawRate], dst[settledRate] = raw/seconds, settled/seconds
 	dst[meanDwell] = ratio(dwell, settled)
 	dst[chatter] = 1 - ratio(settled, raw)
-	dst[seenOvershoot] = ratio(row[sumSeenOver], row[sumSeenCount])
+	dst[seenOvershoot] = ratio(row[sumSeenOver], raw)
 	if !o.truth {
 		return
 	}

@@ -62,7 +62,6 @@ const (
 	sumOvershoot   // m
 	sumWork        // J
 	sumSeenOver    // overshoot by measured positions, m
-	sumSeenCount   // actuations with a measured position
 	sumPairs       // pairs of measured positions a lag apart
 	sumDiff1       // their squared differences, m²
 	sumDiff2       // the same over twice the lag, m²
@@ -90,7 +89,6 @@ type Observer struct {
 	position, measured tally
 	lagged             lagged
 	transitions        transitions
-	lastMeasured       float64 // of the block before
 }
 
 // New makes an Observer.
@@ -117,7 +115,6 @@ func (o *Observer) Take(b *trace.Block) error {
 		o.started = true
 		o.truth = b.Truth
 		o.transitions.begin(b.Start, b.Initial)
-		o.lastMeasured = math.NaN()
 	}
 	samples, events, start := b.Samples, b.Events, b.Start
 	for len(samples) > 0 {
@@ -131,7 +128,6 @@ func (o *Observer) Take(b *trace.Block) error {
 			k = len(events)
 		}
 		o.stretch(start, samples[:n], events[:k])
-		o.lastMeasured = samples[n-1].Measured
 		samples, events, start = samples[n:], events[k:], start+int64(n)
 	}
 	return nil
@@ -147,7 +143,7 @@ func (o *Observer) stretch(start int64, samples []trace.Sample, events []trace.E
 	}
 	o.lagged.add(start, samples, row)
 	for i := range events {
-		o.event(&events[i], start, samples, row)
+		o.event(&events[i], row)
 	}
 	o.transitions.now = start + int64(len(samples))
 	row[sumTicks] += float64(len(samples))
@@ -164,9 +160,8 @@ func (o *Observer) flush(row []float64) {
 	o.measured.flush(row[sumsOfTheRun+half:])
 }
 
-// event books an actuation. Its measured position is interpolated between the
-// samples around it.
-func (o *Observer) event(e *trace.Event, start int64, samples []trace.Sample, row []float64) {
+// event books an actuation.
+func (o *Observer) event(e *trace.Event, row []float64) {
 	if e.Tick < o.transitions.start {
 		o.transitions.startAs(e.Level)
 		return
@@ -175,22 +170,9 @@ func (o *Observer) event(e *trace.Event, start int64, samples []trace.Sample, ro
 	side := e.Level.Sign()
 	row[sumActuations]++
 	row[sumLatency] += float64(e.Tick-e.Decided)/o.ref.Rate + e.Offset
+	row[sumSeenOver] += side * (e.Measured - o.ref.Threshold)
 	if o.truth {
-		over := side * (e.Position - o.ref.Threshold)
-		row[sumOvershoot] += over
-		row[sumWork] += -2 * o.ref.Oscillator.Stiffness * o.ref.HalfDistance * over
-	}
-	i := e.Tick - start
-	before := o.lastMeasured
-	if i >= 0 && i < int64(len(samples)) {
-		before = samples[i].Measured
-	}
-	seen := before
-	if e.Offset > 0 && i+1 >= 0 && i+1 < int64(len(samples)) {
-		seen += (samples[i+1].Measured - before) * e.Offset * o.ref.Rate
-	}
-	if !math.IsNaN(seen) {
-		row[sumSeenOver] += side * (seen - o.ref.Threshold)
-		row[sumSeenCount]++
+		row[sumOvershoot] += side * (e.Position - o.ref.Threshold)
+		row[sumWork] += e.Work
 	}
 }

@@ -82,27 +82,24 @@ func TestSettled(t *testing.T) {
 }
 
 // Overshoot, its measured counterpart, energy, latency and power of actuations
-// between ticks, on a ramp of 0.01 a tick that is cut into blocks of every
-// size: an event may fall between two blocks.
-func TestActuationsOnARamp(t *testing.T) {
+// between ticks, cut into blocks of every size: an event may fall between two
+// blocks.
+func TestActuations(t *testing.T) {
 	r := unit(4, 0.2)
 	const n = 40000
-	at := func(ticks float64) float64 { return 0.2 + 0.01*(ticks-20000) }
-	samples := make([]trace.Sample, n)
-	for i := range samples {
-		samples[i] = trace.Sample{Position: at(float64(i)), Measured: at(float64(i)) + 0.3}
-	}
 	var events []trace.Event
+	var over, seen, work float64
 	for k := range int64(20) {
 		e := trace.Event{Decided: 20000 + 512*k - 3, Tick: 20000 + 512*k - 1, Offset: 0.25 / r.Rate, Level: trace.Level(k+1) % 2}
-		e.Position = at(float64(e.Tick) + 0.25)
+		e.Position = 0.2 + 0.01*float64(k*k)
+		e.Measured = e.Position + 0.3*float64(k)
+		e.Work = 0.7 * float64(k)
+		over += e.Level.Sign() * 0.01 * float64(k*k)
+		seen += e.Level.Sign() * (0.01*float64(k*k) + 0.3*float64(k))
+		work += e.Work
 		events = append(events, e)
 	}
-	// Signs alternate: the sum over pairs is that of half their distance.
-	var over float64
-	for _, e := range events {
-		over += e.Level.Sign() * (e.Position - 0.2)
-	}
+	samples := still(n, 1)
 	for _, size := range []int{1, 7, 512, 1024} {
 		o := newObserver(t, r)
 		deliver(t, o, trace.Lower, samples, events, size)
@@ -114,9 +111,9 @@ func TestActuationsOnARamp(t *testing.T) {
 			got, want float64
 		}{
 			{"overshoot", c[overshoot], over / 20},
-			{"measured overshoot", c[seenOvershoot], over / 20}, // 0.3 too much up, too little down
-			{"energy", c[energy], -2 * r.HalfDistance * over / 20},
-			{"power", c[power], -2 * r.HalfDistance * over / (n / r.Rate)},
+			{"measured overshoot", c[seenOvershoot], seen / 20},
+			{"energy", c[energy], work / 20},
+			{"power", c[power], work / (n / r.Rate)},
 			{"latency", latency, 2.25 / r.Rate},
 		} {
 			if !(math.Abs(tt.got-tt.want) < 1e-9) {

@@ -41,7 +41,9 @@ type Event struct {
 	Tick     int64   // last tick at or before the actuation
 	Offset   float64 // from that tick to the actuation, s; in [0, 1/rate)
 	Level    Level   // the new level
+	Measured float64 // position by the sensor, interpolated to the actuation, m
 	Position float64 // true position at the actuation, m; only where Block.Truth
+	Work     float64 // done on the resonator by it, J; only where Block.Truth
 }
 
 // A Block is a stretch of consecutive ticks with the actuations that became
