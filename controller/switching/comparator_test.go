@@ -11,9 +11,10 @@ import (
 	"brinkwell/controller/trace"
 )
 
-// On an edge of the dead band, at 0.375 nm or 0.625 nm, the level holds.
+// On an edge of the dead band, at 0.375 nm or 0.625 nm, the level holds. (A
+// nanometre that is a power of two keeps the edges exact.)
 func ExampleComparator() {
-	const nm = 1e-9
+	const nm = 1.0 / (1 << 30)
 	c := switching.Comparator{Threshold: 0.5 * nm, HalfBand: 0.125 * nm}
 	for _, x := range []float64{0.625, 0.75, 0.375, 0.25} {
 		fmt.Printf("%.3f nm: %s\n", x, c.Decide(x*nm))
