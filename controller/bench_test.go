@@ -11,6 +11,7 @@ import (
 	"brinkwell/controller/switching"
 	"brinkwell/controller/trace"
 	"brinkwell/plant"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -36,13 +37,13 @@ func (b bench) loop(t testing.TB) *controller.Loop {
 	t.Helper()
 	a := b.centre()
 	p, err := plant.New(plant.Config{
-		Oscillator:  b.oscillator(),
-		Rate:        1 / b.dt,
-		Centres:     [trace.Levels]float64{trace.Lower: -a, trace.Upper: a},
-		Threshold:   b.threshold,
-		Latency:     b.latency * b.dt,
-		SensorNoise: b.noise,
-		Seed:        b.seed,
+		Oscillator: b.oscillator(),
+		Rate:       1 / b.dt,
+		Centres:    [trace.Levels]float64{trace.Lower: -a, trace.Upper: a},
+		Threshold:  b.threshold,
+		Latency:    b.latency * b.dt,
+		Sensor:     chain.White(b.noise, 1/b.dt),
+		Seed:       b.seed,
 	})
 	if err != nil {
 		t.Fatal(err)
@@ -181,7 +182,7 @@ func demo(b *testing.B, noise, band bool, latency float64) (*controller.Loop, *e
 	}
 	comparator := switching.Comparator{}
 	if noise {
-		c.SensorNoise = 30e-15 * math.Sqrt(rate/2)
+		c.Sensor.Density = 30e-15
 	}
 	if band {
 		comparator.HalfBand = 0.02e-9
@@ -190,7 +191,7 @@ func demo(b *testing.B, noise, band bool, latency float64) (*controller.Loop, *e
 	if err != nil {
 		b.Fatal(err)
 	}
-	observer, err := effect.New(effect.Reference{Rate: rate, Oscillator: o, HalfDistance: x1, SensorNoise: c.SensorNoise})
+	observer, err := effect.New(effect.Reference{Rate: rate, Oscillator: o, HalfDistance: x1, SensorNoise: 30e-15 * math.Sqrt(rate/2)})
 	if err != nil {
 		b.Fatal(err)
 	}

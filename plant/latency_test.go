@@ -7,6 +7,7 @@ import (
 
 	"brinkwell/controller/trace"
 	"brinkwell/plant"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -79,7 +80,7 @@ func checkLatency(t *testing.T, quality, latency float64, whole int64, offset fl
 	c := config()
 	c.Oscillator = paddle(quality)
 	c.Oscillator.KT = 0 // starts at rest in the lower well
-	c.SensorNoise = 0
+	c.Sensor.Density = 0
 	c.Latency = latency / rate
 	p := newPlant(t, c)
 	x1 := c.Centres[trace.Upper]
@@ -152,7 +153,7 @@ func checkLatency(t *testing.T, quality, latency float64, whole int64, offset fl
 // The level in force changes at the actuation, not at the decision.
 func TestLevelIsThatInForce(t *testing.T) {
 	c := config()
-	c.Oscillator.KT, c.SensorNoise = 0, 0
+	c.Oscillator.KT, c.Sensor.Density = 0, 0
 	p := newPlant(t, c) // 2.5 ticks
 	var s trace.Sample
 	for tick := range int64(5) {
@@ -210,13 +211,13 @@ func TestLastCommandOfATickHolds(t *testing.T) {
 func TestEventMeasuredAndWork(t *testing.T) {
 	const x1, x0, rate = 3.0, 0.4, 20.0
 	p, err := plant.New(plant.Config{
-		Oscillator:  motion.Oscillator{Omega0: 1, Quality: 10, Stiffness: 1.5, KT: 1},
-		Rate:        rate,
-		Centres:     [trace.Levels]float64{-x1, x1},
-		Threshold:   x0,
-		Latency:     1.3 / rate,
-		SensorNoise: 0.5,
-		Seed:        3,
+		Oscillator: motion.Oscillator{Omega0: 1, Quality: 10, Stiffness: 1.5, KT: 1},
+		Rate:       rate,
+		Centres:    [trace.Levels]float64{-x1, x1},
+		Threshold:  x0,
+		Latency:    1.3 / rate,
+		Sensor:     chain.White(0.5, rate),
+		Seed:       3,
 	})
 	if err != nil {
 		t.Fatal(err)

@@ -1,6 +1,6 @@
 // Package plant is what a loop controls: the resonator in its two parabolas,
-// seen by a noisy sensor and driven by levels that act a latency after the
-// sample that decided them.
+// seen through an imperfect sensor and driven by levels that act a latency
+// after the sample that decided them.
 //
 // A Plant is the Sensor and the Actuator of a bench; it knows nothing of who
 // decides.
@@ -11,20 +11,26 @@ import (
 	"math"
 
 	"brinkwell/controller/trace"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 	"brinkwell/plant/resonator"
 	"brinkwell/plant/variate"
 )
 
-// A Config says what a Plant is made of.
+// A Config says what a Plant is made of. Zero means none for every
+// imperfection.
 type Config struct {
-	Oscillator  motion.Oscillator
-	Rate        float64               // ticks, 1/s
-	Centres     [trace.Levels]float64 // of each level's parabola, m
-	Threshold   float64               // where the parabolas are joined, between the centres, m; for the first draw
-	Latency     float64               // from a sample to the actuation that it decides, s
-	SensorNoise float64               // standard deviation of one sample, m
-	Seed        uint64
+	Oscillator motion.Oscillator
+	Rate       float64               // ticks, 1/s
+	Centres    [trace.Levels]float64 // of each level's parabola, m
+	Threshold  float64               // where the potential is continuous, m; for energies and the first draw
+	Sensor     chain.SensorConfig    // its Rate is set from Rate
+	Latency    float64               // mean, from a sample to the actuation that it decides, s
+	Jitter     float64               // standard deviation of the latency, s
+	Shape      chain.Shape           // of the jitter
+	Lag        float64               // time constant with which a centre follows its level, s
+	LostTicks  float64               // probability that a tick has no sample
+	Seed       uint64
 }
 
 // Streams of the seed.
@@ -33,118 +39,106 @@ const (
 	streamWithin
 	streamSensor
 	streamStart
+	streamPoles
+	streamSticks
+	streamDelay
+	streamLost
 )
 
 func (c Config) validate() error {
 	switch {
 	case !(c.Rate > 0) || math.IsInf(c.Rate, 0):
 		return fmt.Errorf("plant: rate %g Hz, want a positive number", c.Rate)
-	case !(c.Latency >= 0) || !(c.Latency*c.Rate < mostPending):
-		return fmt.Errorf("plant: latency %g s is %g ticks, want 0 to %d ticks", c.Latency, c.Latency*c.Rate, mostPending)
-	case !(c.SensorNoise >= 0) || math.IsInf(c.SensorNoise, 0):
-		return fmt.Errorf("plant: sensor noise %g m, want a finite number, not negative", c.SensorNoise)
-	case math.IsInf(c.Centres[trace.Lower], 0) || math.IsInf(c.Centres[trace.Upper], 0) || !(c.Centres[trace.Lower] < c.Centres[trace.Upper]):
-		return fmt.Errorf("plant: wells at %g m (lower level) and %g m (upper), want finite positions, the upper level's above the lower's",
-			c.Centres[trace.Lower], c.Centres[trace.Upper])
-	case !(c.Centres[trace.Lower] < c.Threshold && c.Threshold < c.Centres[trace.Upper]):
-		return fmt.Errorf("plant: threshold %g m, want one between the wells at %g m and %g m",
-			c.Threshold, c.Centres[trace.Lower], c.Centres[trace.Upper])
+	case !(c.LostTicks >= 0 && c.LostTicks < 1):
+		return fmt.Errorf("plant: a tick is lost with probability %g, want 0 to below 1", c.LostTicks)
+	case !(c.Centres[trace.Lower] < c.Centres[trace.Upper]) ||
+		math.IsInf(c.Centres[trace.Lower], 0) || math.IsInf(c.Centres[trace.Upper], 0):
+		return fmt.Errorf("plant: wells at %g m and %g m, want finite positions with the upper level's above the lower's", c.Centres[trace.Lower], c.Centres[trace.Upper])
+	case !(c.Threshold > c.Centres[trace.Lower] && c.Threshold < c.Centres[trace.Upper]):
+		return fmt.Errorf("plant: threshold at %g m, want it between the wells, at %g m and %g m", c.Threshold, c.Centres[trace.Lower], c.Centres[trace.Upper])
+	}
+	if err := c.Sensor.Validate(); err != nil {
+		return fmt.Errorf("plant: %w", err)
 	}
 	return nil
 }
 
-// mostPending bounds how many ticks long a latency may be, and with it the
-// memory for actuations on their way.
-const mostPending = 1 << 24
+// plain reports whether the resonator alone is stepped: nothing lags, levels
+// act at one instant of a tick, and the reading is position and white noise.
+func (c Config) plain() bool {
+	return c.Sensor.Plain() && c.Jitter == 0 && c.Lag == 0 && c.LostTicks == 0
+}
 
 // A Plant is a simulated bench. It must be made by New and must not be used
 // by two goroutines at once. It does not allocate once it runs, as long as
 // Acted is called every 1,024 ticks.
 type Plant struct {
-	resonator *resonator.Resonator
+	resonator *resonator.Resonator // of a plain plant; otherwise chained has it
 	bath      *resonator.Bath
 	within    *variate.Normal // for positions between ticks
-	centres   [trace.Levels]float64
 	split     resonator.Split // the instant in a tick at which levels act
-	offset    float64         // that instant after the tick, s; 0: at the tick
-	delay     int64           // whole ticks of the latency
+	chained   *chained        // nil for a plain plant
+	started   bool
 
-	noise   *variate.Normal
-	seen    []float64 // sensor noise of the next ticks, m
-	next    int       // of seen
-	sd      float64   // m
-	level   trace.Level
-	started bool
+	noise *variate.Normal
+	seen  []float64 // sensor noise of the next ticks, m
+	next  int       // of seen
+	sd    float64   // m
 
-	pending []command // ring, its length a power of two
-	head    int64     // next to act
-	tail    int64     // next free
-	due     int64     // tick of pending[head]; never where there is none
-	acted   []trace.Event
-	open    bool    // whether the last of acted lacks its Measured
-	last    float64 // measured at the tick before, m
+	level trace.Level
+	delay *chain.Delay
+	due   int64 // tick after which the next level acts
+	acted []trace.Event
+	open  bool    // whether the last of acted lacks its Measured
+	last  float64 // measured at the tick before, m
 
+	centres                    [trace.Levels]float64
 	rate, stiffness, threshold float64
 }
-
-// A command is a level on its way.
-type command struct {
-	decided int64
-	level   trace.Level
-}
-
-const never = math.MaxInt64
 
 // New makes a Plant in equilibrium: its first position, velocity and side are
 // drawn from the Boltzmann distribution of the double well that Config asks.
 func New(c Config) (*Plant, error) {
+	c.Sensor.Rate = c.Rate
 	if err := c.validate(); err != nil {
 		return nil, err
 	}
 	dt := 1 / c.Rate
-	r, err := resonator.New(c.Oscillator, dt)
+	stream := func(k uint64) *variate.Normal { return variate.NewNormal(c.Seed, k) }
+	delay, err := chain.NewDelay(chain.DelayConfig{Rate: c.Rate, Latency: c.Latency, Jitter: c.Jitter, Shape: c.Shape}, stream(streamDelay))
 	if err != nil {
-		return nil, err
+		return nil, fmt.Errorf("plant: %w", err)
 	}
 	p := &Plant{
-		resonator: r,
-		bath:      resonator.NewBath(c.Oscillator, dt, variate.NewNormal(c.Seed, streamThermal)),
-		within:    variate.NewNormal(c.Seed, streamWithin),
+		bath:      resonator.NewBath(c.Oscillator, dt, stream(streamThermal)),
+		within:    stream(streamWithin),
+		noise:     stream(streamSensor),
+		seen:      make([]float64, noiseDrawn),
+		next:      noiseDrawn,
+		sd:        c.Sensor.NoiseSD(),
+		delay:     delay,
+		due:       delay.Due(),
+		acted:     make([]trace.Event, 0, 1024),
 		centres:   c.Centres,
-		noise:     variate.NewNormal(c.Seed, streamSensor),
-		seen:      make([]float64, 512),
-		sd:        c.SensorNoise,
-		due:       never,
 		rate:      c.Rate,
 		stiffness: c.Oscillator.Stiffness,
 		threshold: c.Threshold,
 	}
-	p.next = len(p.seen)
-	p.delay, p.offset = wholeTicks(c.Latency, c.Rate)
-	if p.offset > 0 {
-		p.split = r.Split(p.offset)
+	if !c.plain() {
+		if p.chained, err = newChained(c, delay.Offset(), p.within, stream); err != nil {
+			return nil, err
+		}
 	}
-	ring := 2
-	for int64(ring) < p.delay+2 {
-		ring *= 2
+	if p.resonator, err = resonator.New(c.Oscillator, dt); err != nil {
+		return nil, err
 	}
-	p.pending = make([]command, ring)
-	p.acted = make([]trace.Event, 0, 1024)
+	p.split = p.resonator.Split(delay.Offset())
 	p.begin(c)
 	return p, nil
 }
 
-// wholeTicks splits a latency into whole ticks and a rest in [0, tick), s. A
-// rest within rounding of a whole tick is one.
-func wholeTicks(latency, rate float64) (ticks int64, rest float64) {
-	const rounding = 1e-9 // ticks
-	t := latency * rate
-	n := math.Floor(t + rounding)
-	if t-n <= rounding {
-		return int64(n), 0
-	}
-	return int64(n), (t - n) / rate
-}
+// noiseDrawn samples of noise are drawn at once.
+const noiseDrawn = 512
 
 // begin draws the first state: a well by its weight, then a position of that
 // well's normal distribution on its own side of the threshold.
@@ -156,8 +150,9 @@ func (p *Plant) begin(c Config) {
 	upper := (c.Centres[trace.Upper] - c.Threshold) / sigma
 	lower := (c.Threshold - c.Centres[trace.Lower]) / sigma
 	logOdds := (upper*upper-lower*lower)/2 + math.Log(math.Erfc(-upper/math.Sqrt2)/math.Erfc(-lower/math.Sqrt2))
+	share := 1 / (1 + math.Exp(-logOdds))
 	p.level = trace.Lower
-	if n.Float64() < 1/(1+math.Exp(-logOdds)) {
+	if n.Float64() < share {
 		p.level = trace.Upper
 	}
 	centre := c.Centres[p.level]
@@ -168,7 +163,12 @@ func (p *Plant) begin(c Config) {
 			break
 		}
 	}
-	p.resonator.Set(x, math.Sqrt(o.KT/o.Mass())*n.Next(), centre)
+	v := math.Sqrt(o.KT/o.Mass()) * n.Next()
+	p.resonator.Set(x, v, centre)
+	if p.chained != nil {
+		mean := share*c.Centres[trace.Upper] + (1-share)*c.Centres[trace.Lower]
+		p.chained.mover.Set(x, v, centre, mean)
+	}
 }
 
 // Level returns the level in force.
@@ -177,6 +177,10 @@ func (p *Plant) Level() trace.Level { return p.level }
 // Sense advances to the next tick and fills in what is known of it. The first
 // call gives the first state; ticks must follow one another.
 func (p *Plant) Sense(tick int64, s *trace.Sample) error {
+	if p.chained != nil {
+		p.senseChained(tick, s)
+		return nil
+	}
 	switch {
 	case tick-1 == p.due:
 		p.act(tick - 1)
@@ -194,17 +198,12 @@ func (p *Plant) Sense(tick int64, s *trace.Sample) error {
 	s.Position = x
 	s.Velocity = p.resonator.Velocity()
 	if p.open {
-		p.measure(s.Measured)
+		e := &p.acted[len(p.acted)-1]
+		e.Measured = p.last + (s.Measured-p.last)*e.Offset*p.rate
+		p.open = false
 	}
 	p.last = s.Measured
 	return nil
-}
-
-// measure completes the last event with what the sensor saw around it.
-func (p *Plant) measure(next float64) {
-	e := &p.acted[len(p.acted)-1]
-	e.Measured = p.last + (next-p.last)*e.Offset*p.rate
-	p.open = false
 }
 
 // look draws the sensor noise of the next ticks.
@@ -219,17 +218,8 @@ func (p *Plant) look() {
 // Actuate sends a level on its way at a tick; it acts the latency later. Of
 // several levels of one tick the last holds.
 func (p *Plant) Actuate(tick int64, level trace.Level) error {
-	if p.head < p.tail {
-		if last := &p.pending[(p.tail-1)&int64(len(p.pending)-1)]; last.decided == tick {
-			last.level = level
-			return nil
-		}
-	}
-	p.pending[p.tail&int64(len(p.pending)-1)] = command{decided: tick, level: level}
-	if p.head == p.tail {
-		p.due = tick + p.delay
-	}
-	p.tail++
+	p.delay.Push(tick, level)
+	p.due = p.delay.Due()
 	return nil
 }
 
@@ -237,27 +227,23 @@ func (p *Plant) Actuate(tick int64, level trace.Level) error {
 // continuous at x0 whatever the centre c, dU/dc = -k·(x - x0): a centre that
 // jumps does the work -k·(x - x0)·Δc.
 func (p *Plant) act(tick int64) {
-	mask := int64(len(p.pending) - 1)
-	c := p.pending[p.head&mask]
-	p.head++
-	p.due = never
-	if p.head < p.tail {
-		p.due = p.pending[p.head&mask].decided + p.delay
-	}
-	e := trace.Event{Decided: c.decided, Tick: tick, Offset: p.offset, Level: c.level}
-	if p.offset > 0 {
-		e.Position = p.resonator.StepMoving(p.bath.Next(), &p.split, p.centres[c.level], p.within)
+	c := p.delay.Pop()
+	p.due = p.delay.Due()
+	e := trace.Event{Decided: c.Decided, Tick: tick, Offset: c.Offset, Level: c.Level}
+	if c.Offset > 0 {
+		e.Position = p.resonator.StepMoving(p.bath.Next(), &p.split, p.centres[c.Level], p.within)
 	} else {
 		e.Position = p.resonator.Position()
-		p.resonator.Move(p.centres[c.level])
+		p.resonator.Move(p.centres[c.Level])
 		p.resonator.Step(p.bath.Next())
 	}
-	e.Work = -p.stiffness * (e.Position - p.threshold) * (p.centres[c.level] - p.centres[p.level])
-	p.level = c.level
+	e.Work = -p.stiffness * (e.Position - p.threshold) * (p.centres[c.Level] - p.centres[p.level])
+	p.level = c.Level
 	p.acted, p.open = append(p.acted, e), true
 }
 
-// Acted appends the actuations since its last call to dst.
+// Acted appends the actuations since its last call to dst. With a lag an
+// actuation is known once its centre has arrived, or another one begins.
 func (p *Plant) Acted(dst []trace.Event) []trace.Event {
 	dst = append(dst, p.acted...)
 	p.acted = p.acted[:0]

@@ -7,6 +7,7 @@ import (
 
 	"brinkwell/controller/trace"
 	"brinkwell/plant"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -23,12 +24,12 @@ func config() plant.Config {
 	o := paddle(35)
 	x1 := 2 * math.Sqrt(o.KT/o.Stiffness)
 	return plant.Config{
-		Oscillator:  o,
-		Rate:        rate,
-		Centres:     [trace.Levels]float64{-x1, x1},
-		Latency:     2.5 / rate,
-		SensorNoise: 0.02 * x1,
-		Seed:        1,
+		Oscillator: o,
+		Rate:       rate,
+		Centres:    [trace.Levels]float64{-x1, x1},
+		Latency:    2.5 / rate,
+		Sensor:     chain.White(0.02*x1, rate),
+		Seed:       1,
 	}
 }
 
@@ -79,9 +80,9 @@ func TestBadConfigIsRefused(t *testing.T) {
 		{"latency not a number", "latency", func(c *plant.Config) { c.Latency = nan }},
 		{"latency infinite", "latency", func(c *plant.Config) { c.Latency = inf }},
 		{"latency of 17 million ticks", "latency", func(c *plant.Config) { c.Latency = 17 }},
-		{"noise negative", "noise", func(c *plant.Config) { c.SensorNoise = -1e-12 }},
-		{"noise not a number", "noise", func(c *plant.Config) { c.SensorNoise = nan }},
-		{"noise infinite", "noise", func(c *plant.Config) { c.SensorNoise = inf }},
+		{"noise negative", "noise", func(c *plant.Config) { c.Sensor.Density = -1e-12 }},
+		{"noise not a number", "noise", func(c *plant.Config) { c.Sensor.Density = nan }},
+		{"noise infinite", "noise", func(c *plant.Config) { c.Sensor.Density = inf }},
 		{"wells swapped", "well", func(c *plant.Config) { c.Centres = [trace.Levels]float64{1e-9, -1e-9} }},
 		{"wells in one place", "well", func(c *plant.Config) { c.Centres = [trace.Levels]float64{} }},
 		{"a well not a number", "well", func(c *plant.Config) { c.Centres[trace.Upper] = nan }},
@@ -174,7 +175,7 @@ func TestSeedDeterminesTheRun(t *testing.T) {
 // same motion: the streams are separate.
 func TestNoiseDoesNotMoveTheResonator(t *testing.T) {
 	quiet, noisy := config(), config()
-	quiet.SensorNoise = 0
+	quiet.Sensor.Density = 0
 	a, b := newPlant(t, quiet), newPlant(t, noisy)
 	for tick := range int64(5000) {
 		var sa, sb trace.Sample

@@ -24,7 +24,7 @@ func TestSensorNoiseIsWhite(t *testing.T) {
 	noise, x, v := make([]float64, n), make([]float64, n), make([]float64, n)
 	p := newPlant(t, c)
 	closed(t, p, 0, n, func(tick int64, s *trace.Sample) {
-		noise[tick] = (s.Measured - s.Position) / c.SensorNoise
+		noise[tick] = (s.Measured - s.Position) / c.Sensor.NoiseSD()
 		x[tick], v[tick] = s.Position, s.Velocity
 	})
 	if len(p.Acted(nil)) < 1000 {

@@ -18,6 +18,7 @@ import (
 	"brinkwell/controller/theory"
 	"brinkwell/controller/trace"
 	"brinkwell/plant"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -92,13 +93,13 @@ func New(c Config) (*Trial, error) {
 		return nil, fmt.Errorf("trial: a duration of %g s at %g Hz is less than one tick", c.Duration, c.Rate)
 	}
 	p, err := plant.New(plant.Config{
-		Oscillator:  c.Oscillator,
-		Rate:        c.Rate,
-		Centres:     [trace.Levels]float64{trace.Lower: -c.HalfDistance, trace.Upper: c.HalfDistance},
-		Threshold:   c.Threshold,
-		Latency:     c.Latency,
-		SensorNoise: c.SensorNoise(),
-		Seed:        c.Seed,
+		Oscillator: c.Oscillator,
+		Rate:       c.Rate,
+		Centres:    [trace.Levels]float64{trace.Lower: -c.HalfDistance, trace.Upper: c.HalfDistance},
+		Threshold:  c.Threshold,
+		Latency:    c.Latency,
+		Sensor:     chain.SensorConfig{Density: c.NoiseDensity},
+		Seed:       c.Seed,
 	})
 	if err != nil {
 		return nil, err

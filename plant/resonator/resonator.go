@@ -26,7 +26,6 @@ type Resonator struct {
 	centre float64 // m
 
 	phi        motion.Propagator // of a tick
-	chol       cholesky          // of a tick's noise
 	oscillator motion.Oscillator
 	dt         float64 // s
 }
@@ -37,7 +36,7 @@ func New(o motion.Oscillator, dt float64) (*Resonator, error) {
 	if !(dt > 0) || math.IsInf(dt, 0) {
 		return nil, errors.New("resonator: a tick must take a positive time")
 	}
-	return &Resonator{phi: o.Propagate(dt), chol: newCholesky(o, dt), oscillator: o, dt: dt}, nil
+	return &Resonator{phi: o.Propagate(dt), oscillator: o, dt: dt}, nil
 }
 
 // Set puts the resonator at position x, in metres, with velocity v, in m/s, in
@@ -65,35 +64,20 @@ func (r *Resonator) Move(centre float64) {
 
 // A Split is an instant within a tick: what StepMoving needs to know of it.
 type Split struct {
+	bridge       Bridge
 	toXX, toXV   float64 // propagator to the instant, position row
-	gainX, gainV float64 // expected noise at the instant, by the whole tick's
-	spread       float64 // sd of the rest, m
 	moveX, moveV float64 // response at the tick's end to a centre moved by 1
 }
 
 // Split returns the instant offset seconds after a tick, offset in [0, dt). It
 // panics otherwise.
-//
-// With η the noise up to the instant and Φ, C of the rest of the tick, the
-// whole tick's noise is ξ = Φ·η + ρ; given ξ, which is drawn whether or not
-// something happens within the tick, η is normal with mean K·ξ,
-// K = C_η·Φᵀ·C_ξ⁻¹, and covariance C_η - K·Φ·C_η.
 func (r *Resonator) Split(offset float64) Split {
 	if !(offset >= 0 && offset < r.dt) {
 		panic("resonator: an instant outside its tick")
 	}
-	rest := r.dt - offset
-	to, after := r.oscillator.Propagate(offset), r.oscillator.Propagate(rest)
-	cov := r.oscillator.Noise(offset)
-	// First row of C_η·Φᵀ: covariance of the noise at the instant with ξ.
-	withX := cov.XX*after.XX + cov.XV*after.XV
-	withV := cov.XX*after.VX + cov.XV*after.VV
-	// Solve with the Cholesky factor of C_ξ: free of its units.
-	a, b := r.chol.solve(withX, withV)
-	s := Split{toXX: to.XX, toXV: to.XV}
-	s.gainX, s.gainV = r.chol.solveTransposed(a, b)
-	s.spread = math.Sqrt(math.Max(0, cov.XX-a*a-b*b))
-	s.moveX, s.moveV = r.oscillator.StepResponse(rest)
+	to := r.oscillator.Propagate(offset)
+	s := Split{bridge: NewBridge(r.oscillator, r.dt, offset), toXX: to.XX, toXV: to.XV}
+	s.moveX, s.moveV = r.oscillator.StepResponse(r.dt - offset)
 	return s
 }
 
@@ -102,7 +86,8 @@ func (r *Resonator) Split(offset float64) Split {
 func (r *Resonator) StepMoving(n *Kick, s *Split, centre float64, within *variate.Normal) (at float64) {
 	u, v := r.u, r.v
 	r.Step(n)
-	at = r.centre + s.toXX*u + s.toXV*v + s.gainX*n.X + s.gainV*n.V + s.spread*within.Next()
+	b := &s.bridge
+	at = r.centre + s.toXX*u + s.toXV*v + b.GainX*n.X + b.GainV*n.V + b.Spread*within.Next()
 	shift := centre - r.centre
 	r.u += s.moveX * shift
 	r.v += s.moveV * shift
