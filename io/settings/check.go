@@ -17,7 +17,7 @@ const (
 // check finds settings that contradict each other. It expects every value to be
 // in its own range.
 func (s Settings) check(beyondRange bool) error {
-	wrong := []error{s.checkWells(), s.checkRate(), s.checkRun()}
+	wrong := []error{s.checkWells(), s.checkRate(), s.checkRun(), s.checkSensor()}
 	if !beyondRange {
 		wrong = append(wrong, s.checkLatency())
 	}
@@ -58,19 +58,43 @@ func (s Settings) checkRate() error {
 		s.show("loop.rate"), float64(s.Loop.Rate)/per, name, brief(&duration, 1/per), minTicks, atLeastRate(minTicks*per))
 }
 
+func (s Settings) checkSensor() error {
+	var wrong []error
+	if s.Sensor.Sense == 0 {
+		wrong = append(wrong, problemf("%s: allowed: 1 or -1", s.show("sensor.sense")))
+	}
+	if s.Sensor.Bits > 0 && s.Sensor.Range == 0 {
+		wrong = append(wrong, problemf("%s needs a sensor.range: the converter's step is 2·range/2^bits", s.show("sensor.bits")))
+	}
+	if low, high := s.Sensor.Bandwidth, s.Sensor.HighPass; low > 0 && high >= low {
+		wrong = append(wrong, problemf("%s with %s: nothing passes; the high-pass must lie below the bandwidth",
+			s.show("sensor.high_pass"), s.show("sensor.bandwidth")))
+	}
+	return errors.Join(wrong...)
+}
+
+// lateness is the latency with the lags of sensor and output.
+func (s Settings) lateness() Second {
+	late := s.Loop.Latency + s.Output.Lag
+	if b := s.Sensor.Bandwidth; b > 0 {
+		late += Second(1 / (2 * math.Pi * float64(b)))
+	}
+	return late
+}
+
 func (s Settings) checkLatency() error {
 	if !s.late() {
 		return nil
 	}
 	per, name := s.characteristic()
 	return problemf("%s: above 1/8 of the resonator's %s, %s, where the loop may self-oscillate; --beyond-range allows it",
-		s.show("loop.latency"), name, brief(&duration, maxLatency/per))
+		s.showLateness(), name, brief(&duration, maxLatency/per))
 }
 
 // late reports whether the latency is beyond the range of the small-latency theory.
 func (s Settings) late() bool {
 	per, _ := s.characteristic()
-	return !(float64(s.Loop.Latency)*per <= maxLatency)
+	return !(float64(s.lateness())*per <= maxLatency)
 }
 
 func (s Settings) checkRun() error {
@@ -97,9 +121,18 @@ func (s Settings) Warnings() []string {
 	}
 	if s.late() {
 		list = append(list, fmt.Sprintf("%s: above 1/8 of the resonator's %s, %s: the loop may self-oscillate",
-			s.show("loop.latency"), name, brief(&duration, maxLatency/per)))
+			s.showLateness(), name, brief(&duration, maxLatency/per)))
 	}
 	return list
+}
+
+// showLateness writes the latency, and with it the lags where there are any.
+func (s Settings) showLateness() string {
+	text := s.show("loop.latency")
+	if late := s.lateness(); late != s.Loop.Latency {
+		text += ", " + brief(&duration, float64(late)) + " with the lags of sensor and output"
+	}
+	return text
 }
 
 // show writes a key with its value in s, as in a file.

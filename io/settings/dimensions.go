@@ -9,9 +9,11 @@ type (
 	Kelvin            float64 // temperature, K
 	NewtonPerMetre    float64 // stiffness, N/m
 	MetrePerRootHertz float64 // one-sided amplitude density of a length, m/rtHz
+	MetrePerSecond    float64 // speed, m/s
 
-	Bare  float64 // a number without a unit
-	Count int64   // a whole number
+	Bare   float64 // a number without a unit
+	Count  int64   // a whole number
+	Choice string  // one of the words that its key allows
 )
 
 var (
@@ -20,6 +22,7 @@ var (
 	length       = dimension{"a length", "0.02 nm", []unit{{"m", 1}}, 3}
 	temperature  = dimension{"a temperature", "293.15 K", []unit{{"K", 1}}, 0}
 	stiffness    = dimension{"a stiffness", "0.08 N/m", []unit{{"N/m", 1}}, 12}
+	speed        = dimension{"a speed", "2 pm/s", []unit{{"m/s", 1}}, 3}
 	noiseDensity = dimension{"a noise density", "30 fm/rtHz", []unit{{"m/rtHz", 1}, {"m/√Hz", 1}}, 3}
 )
 
@@ -28,4 +31,5 @@ func (Second) dimension() *dimension            { return &duration }
 func (Metre) dimension() *dimension             { return &length }
 func (Kelvin) dimension() *dimension            { return &temperature }
 func (NewtonPerMetre) dimension() *dimension    { return &stiffness }
+func (MetrePerSecond) dimension() *dimension    { return &speed }
 func (MetrePerRootHertz) dimension() *dimension { return &noiseDensity }

@@ -5,6 +5,7 @@ import (
 	"math"
 	"reflect"
 	"slices"
+	"strconv"
 	"strings"
 )
 
@@ -16,6 +17,7 @@ type key struct {
 	value string // of the built-in demo, written as for Sources.Set; "": none
 	unit  string // of a bare number, for messages; "": none
 	span  span
+	words []string               // that a Choice may be
 	twin  string                 // the key that says the same thing in another way
 	said  func(Settings) float64 // for a key with a twin: its value, whichever was stated
 	doc   string                 // for the users, in lines
@@ -79,9 +81,81 @@ var keys = []key{
 			"relaxation time) the loop may self-oscillate, and only --beyond-range allows it.",
 	},
 	{
+		name: "loop.jitter", value: "0 s", span: atLeast(0),
+		doc: "Standard deviation of the latency about its mean, actuation by actuation. Zero: none.",
+	},
+	{
+		name: "loop.jitter_shape", value: "normal", words: []string{"uniform", "normal", "exponential"},
+		doc: "Distribution of the jitter, cut so that the latency stays positive. uniform: within sqrt(3)·jitter on\n" +
+			"either side; exponential: from latency - jitter on, with a tail to long ones. An actuation never\n" +
+			"overtakes the one before it.",
+	},
+	{
+		name: "loop.lost_ticks", value: "0", span: probability(),
+		doc: "Probability that a tick has no sample and decides nothing. Zero: none.",
+	},
+	{
+		name: "loop.hold_off", value: "0 s", span: atLeast(0),
+		doc: "After a new level was decided no other is for this long, rounded up to whole ticks. Zero: none.",
+	},
+	{
+		name: "loop.keep_threshold", value: "off", words: []string{"off", "midpoint"},
+		doc: "midpoint: the threshold slowly follows the mean of the two mean positions, one for each level, so that\n" +
+			"a drift of the sensor's zero does not tilt the wells; a wanted tilt is kept. off: it stays.",
+	},
+	{
 		name: "sensor.noise", value: "30 fm/rtHz", span: atLeast(0),
 		doc: "Noise of the measured position, a one-sided density: without a bandwidth the standard deviation\n" +
-			"of each sample is noise·sqrt(rate/2). Zero: none.",
+			"of each sample is noise·sqrt(rate/2), with one noise·sqrt(pi/2·bandwidth). Zero: none.",
+	},
+	{
+		name: "sensor.bandwidth", value: "0 Hz", span: atLeast(0),
+		doc: "Corner frequency of the sensor's low-pass, one pole, for motion and noise. Zero: none.",
+	},
+	{
+		name: "sensor.high_pass", value: "0 Hz", span: atLeast(0),
+		doc: "Corner frequency of an AC coupling, one pole, behind the low-pass: the reading's zero then wanders with\n" +
+			"the time spent in either well. Zero: none, DC coupled.",
+	},
+	{
+		name: "sensor.bits", value: "0", span: within(0, 48),
+		doc: "Resolution of the converter, codes from -2^(bits-1) to 2^(bits-1)-1. Zero: continuous.",
+	},
+	{
+		name: "sensor.range", value: "0 m", span: atLeast(0),
+		doc: "The converter converts from -range to +range and clips what lies beyond. Zero: unlimited.",
+	},
+	{
+		name: "sensor.offset", value: "0 m", span: within(-math.MaxFloat64, math.MaxFloat64),
+		doc: "Constant error of the reading.",
+	},
+	{
+		name: "sensor.drift", value: "0 m/s", span: within(-math.MaxFloat64, math.MaxFloat64),
+		doc: "Speed at which the offset grows, from the start of the measured run on.",
+	},
+	{
+		name: "sensor.gain_error", value: "0", span: span{-1, 10, true},
+		doc: "Relative error of the reading's scale: it is 1 + gain_error times the position.",
+	},
+	{
+		name: "sensor.sense", value: "1", span: within(-1, 1),
+		doc: "Which way the reading goes: 1 with the position; -1 against it, as with a sensor wired the wrong way round.",
+	},
+	{
+		name: "sensor.sticks", value: "0", span: probability(),
+		doc: "Probability that a sample repeats the reading before it. Zero: none.",
+	},
+	{
+		name: "sensor.hum_amplitude", value: "0 m", span: atLeast(0),
+		doc: "Amplitude of mains hum in the position signal, ahead of the sensor's poles. Zero: none.",
+	},
+	{
+		name: "sensor.hum_frequency", value: "50 Hz", span: above(0),
+		doc: "Frequency of the hum.",
+	},
+	{
+		name: "output.lag", value: "0 s", span: atLeast(0),
+		doc: "Time constant, one pole, with which the force follows a new level, such as an amplifier's. Zero: at once.",
 	},
 	{
 		name: "run.duration", value: "60 s", span: above(0),
@@ -120,14 +194,30 @@ type span struct {
 func within(low, high float64) span { return span{low, high, false} }
 func atLeast(low float64) span      { return span{low, math.MaxFloat64, false} }
 func above(low float64) span        { return span{low, math.MaxFloat64, true} }
+func probability() span             { return span{0, math.Nextafter(1, 0), false} }
 func upTo(high float64) span        { return span{0, high, true} }
 
 func (s span) contains(v float64) bool {
 	return v >= s.low && v <= s.high && (!s.open || v > s.low)
 }
 
+// allowed says what the key's values may be.
+func (k key) allowed() string {
+	if k.words == nil {
+		return k.span.describe(k.format)
+	}
+	quoted := make([]string, len(k.words))
+	for i, w := range k.words {
+		quoted[i] = strconv.Quote(w)
+	}
+	return strings.Join(quoted, " or ")
+}
+
 // describe says what a span allows; format writes its ends.
 func (s span) describe(format func(float64) string) string {
+	if s == probability() {
+		return "at least 0 and below 1"
+	}
 	text := "at least " + format(s.low)
 	if s.open {
 		text = "above " + format(s.low)

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"math"
 	"reflect"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -120,6 +121,9 @@ func decode(_, to reflect.Type, data any) (any, error) {
 		}
 		return n, e.inRange(float64(n))
 	}
+	if to == reflect.TypeFor[Choice]() {
+		return e.choice()
+	}
 	read := e.bare
 	if e.key.quantity() != nil {
 		read = e.quantity
@@ -175,6 +179,23 @@ func (e entry) bare() (float64, error) {
 	return 0, e.wrong("a number%s is needed, without unit or quotes", e.key.inUnit())
 }
 
+// choice reads one of the key's words.
+func (e entry) choice() (Choice, error) {
+	var stated string
+	switch v := e.value.(type) {
+	case text:
+		stated = string(v)
+	case string:
+		stated = v
+	default:
+		return "", e.wrong("a word is needed; allowed: %s", e.key.allowed())
+	}
+	if !slices.Contains(e.key.words, stated) {
+		return "", e.wrong("unknown word; allowed: %s; the nearest is %q", e.key.allowed(), nearest(stated, e.key.words))
+	}
+	return Choice(stated), nil
+}
+
 // inUnit names the unit that a bare number counts in, if any.
 func (k key) inUnit() string {
 	if k.unit == "" {
@@ -205,7 +226,7 @@ func (e entry) inRange(v float64) error {
 	if e.key.span.contains(v) {
 		return nil
 	}
-	return e.wrong("out of range; allowed: %s", e.key.span.describe(e.key.format))
+	return e.wrong("out of range; allowed: %s", e.key.allowed())
 }
 
 // format writes a value of the key with its unit.

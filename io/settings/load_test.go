@@ -35,8 +35,8 @@ func TestDemo(t *testing.T) {
 	want := Settings{
 		Resonator: Resonator{Frequency: 6500, Stiffness: 0.08, Quality: 35, Temperature: 293.15},
 		Wells:     Wells{Barrier: &barrier, Tilt: &tilt},
-		Loop:      Loop{Rate: 1e6, HalfBand: 0.02e-9, Latency: 1e-6},
-		Sensor:    Sensor{Noise: 30e-15},
+		Loop:      Loop{Rate: 1e6, HalfBand: 0.02e-9, Latency: 1e-6, JitterShape: "normal", KeepThreshold: "off"},
+		Sensor:    Sensor{Noise: 30e-15, Sense: 1, HumFrequency: 50},
 		Run:       Run{Duration: 60, WarmUp: got.Run.WarmUp, Seed: 1},
 		Tolerance: Tolerance{Barrier: 0.1, Temperature: 0.05},
 	}

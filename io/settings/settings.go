@@ -17,6 +17,7 @@ type Settings struct {
 	Wells     Wells     `mapstructure:"wells"`
 	Loop      Loop      `mapstructure:"loop"`
 	Sensor    Sensor    `mapstructure:"sensor"`
+	Output    Output    `mapstructure:"output"`
 	Run       Run       `mapstructure:"run"`
 	Tolerance Tolerance `mapstructure:"tolerance"`
 }
@@ -42,11 +43,34 @@ type Loop struct {
 	Threshold *Metre `mapstructure:"threshold"` // from the midpoint; nil where Wells.Tilt is stated
 	HalfBand  Metre  `mapstructure:"half_band"`
 	Latency   Second `mapstructure:"latency"`
+
+	Jitter        Second `mapstructure:"jitter"`
+	JitterShape   Choice `mapstructure:"jitter_shape"`
+	LostTicks     Bare   `mapstructure:"lost_ticks"` // probability
+	HoldOff       Second `mapstructure:"hold_off"`
+	KeepThreshold Choice `mapstructure:"keep_threshold"`
 }
 
 // Sensor is the position sensor.
 type Sensor struct {
-	Noise MetrePerRootHertz `mapstructure:"noise"` // one-sided
+	Noise     MetrePerRootHertz `mapstructure:"noise"` // one-sided
+	Bandwidth Hertz             `mapstructure:"bandwidth"`
+	HighPass  Hertz             `mapstructure:"high_pass"`
+	Bits      Count             `mapstructure:"bits"`
+	Range     Metre             `mapstructure:"range"`
+	Offset    Metre             `mapstructure:"offset"`
+	Drift     MetrePerSecond    `mapstructure:"drift"`
+	GainError Bare              `mapstructure:"gain_error"`
+	Sense     Count             `mapstructure:"sense"`  // +1 or -1
+	Sticks    Bare              `mapstructure:"sticks"` // probability
+
+	HumAmplitude Metre `mapstructure:"hum_amplitude"`
+	HumFrequency Hertz `mapstructure:"hum_frequency"`
+}
+
+// Output is the way from a level to the force.
+type Output struct {
+	Lag Second `mapstructure:"lag"`
 }
 
 // Run is what is simulated or recorded. Load resolves WarmUp where it was not stated.

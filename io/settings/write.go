@@ -31,7 +31,7 @@ func (s Settings) WriteTOML(w io.Writer) error {
 		for line := range strings.Lines(k.doc) {
 			b.WriteString("# " + strings.TrimSuffix(line, "\n") + "\n")
 		}
-		fmt.Fprintf(&b, "# Allowed: %s.\n", k.span.describe(k.format))
+		fmt.Fprintf(&b, "# Allowed: %s.\n", k.allowed())
 		field := k.field(&s)
 		if field.Kind() == reflect.Pointer && field.IsNil() {
 			fmt.Fprintf(&b, "# Here %s is the same as %s = %s\n", s.show(k.twin), name, k.brief(k.said(s)))
@@ -58,6 +58,9 @@ func literal(v reflect.Value) string {
 	v = reflect.Indirect(v)
 	if q, ok := v.Interface().(interface{ dimension() *dimension }); ok {
 		return strconv.Quote(q.dimension().format(v.Float()))
+	}
+	if v.Kind() == reflect.String {
+		return strconv.Quote(v.String())
 	}
 	if v.CanInt() {
 		return strconv.FormatInt(v.Int(), 10)

@@ -53,7 +53,26 @@ func randomSettings(t *rapid.T) Settings {
 	s.Loop.Rate = Hertz(per * logUniform(t, 7, min(99, 1e12/per), "ticks"))
 	s.Loop.HalfBand = Metre(rapid.Float64Range(0, 0.05).Draw(t, "half band") * s.HalfDistance())
 	s.Loop.Latency = Second(rapid.Float64Range(0, 0.12).Draw(t, "latency") / per)
-	s.Sensor.Noise = MetrePerRootHertz(rapid.Float64Min(0).Draw(t, "noise"))
+	s.Loop.Jitter = Second(rapid.Float64Min(0).Draw(t, "jitter"))
+	s.Loop.JitterShape = Choice(rapid.SampledFrom([]string{"uniform", "normal", "exponential"}).Draw(t, "shape"))
+	s.Loop.LostTicks = Bare(rapid.Float64Range(0, 0.999).Draw(t, "lost ticks"))
+	s.Loop.HoldOff = Second(rapid.Float64Min(0).Draw(t, "hold-off"))
+	s.Loop.KeepThreshold = Choice(rapid.SampledFrom([]string{"off", "midpoint"}).Draw(t, "keep"))
+	s.Sensor = Sensor{
+		Noise:        MetrePerRootHertz(rapid.Float64Min(0).Draw(t, "noise")),
+		Bandwidth:    Hertz(per * logUniform(t, 1e3, 1e6, "bandwidth")),
+		HighPass:     Hertz(per * logUniform(t, 1e-9, 1e2, "high-pass")),
+		Bits:         Count(rapid.Int64Range(0, 48).Draw(t, "bits")),
+		Range:        Metre(logUniform(t, 1e-15, 1, "range")),
+		Offset:       Metre(rapid.Float64().Draw(t, "offset")),
+		Drift:        MetrePerSecond(rapid.Float64().Draw(t, "drift")),
+		GainError:    Bare(rapid.Float64Range(-0.9, 10).Draw(t, "gain error")),
+		Sense:        Count(rapid.SampledFrom([]int{-1, 1}).Draw(t, "sense")),
+		Sticks:       Bare(rapid.Float64Range(0, 0.999).Draw(t, "sticks")),
+		HumAmplitude: Metre(rapid.Float64Min(0).Draw(t, "hum")),
+		HumFrequency: Hertz(logUniform(t, 1e-3, 1e9, "hum frequency")),
+	}
+	s.Output.Lag = Second(rapid.Float64Range(0, 0.004).Draw(t, "lag") / per)
 	s.Run = Run{
 		Duration: Second(logUniform(t, 1, 9e14, "run") / float64(s.Loop.Rate)),
 		WarmUp:   Second(rapid.Float64Range(0, 9e14).Draw(t, "warm-up") / float64(s.Loop.Rate)),
