@@ -50,7 +50,7 @@ func randomSettings(t *rapid.T) Settings {
 		s.Wells.Tilt = &tilt
 	}
 	per, _ := s.characteristic()
-	s.Loop.Rate = Hertz(per * logUniform(t, 7, min(99, 1e12/per), "ticks"))
+	s.Loop.Rate = min(1e12, Hertz(per*logUniform(t, 7, min(99, 1e12/per), "ticks")))
 	s.Loop.HalfBand = Metre(rapid.Float64Range(0, 0.05).Draw(t, "half band") * s.HalfDistance())
 	s.Loop.Latency = Second(rapid.Float64Range(0, 0.12).Draw(t, "latency") / per)
 	s.Loop.Jitter = Second(rapid.Float64Min(0).Draw(t, "jitter"))
