@@ -17,6 +17,7 @@ import (
 
 	"brinkwell/controller/trial"
 	"brinkwell/io/settings"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -130,10 +131,26 @@ func trialConfig(s settings.Settings) trial.Config {
 		Rate:         float64(s.Loop.Rate),
 		HalfBand:     float64(s.Loop.HalfBand),
 		Latency:      float64(s.Loop.Latency),
-		NoiseDensity: float64(s.Sensor.Noise),
-		Duration:     float64(s.Run.Duration),
-		WarmUp:       float64(s.Run.WarmUp),
-		Seed:         uint64(s.Run.Seed),
+		Jitter:       float64(s.Loop.Jitter),
+		Shape:        chain.Shape(s.Loop.JitterShape),
+		LostTicks:    float64(s.Loop.LostTicks),
+		Sensor: chain.SensorConfig{
+			Density:      float64(s.Sensor.Noise),
+			Bandwidth:    float64(s.Sensor.Bandwidth),
+			HighPass:     float64(s.Sensor.HighPass),
+			GainError:    float64(s.Sensor.GainError),
+			Inverted:     s.Sensor.Sense < 0,
+			Offset:       float64(s.Sensor.Offset),
+			Drift:        float64(s.Sensor.Drift),
+			HumAmplitude: float64(s.Sensor.HumAmplitude),
+			HumFrequency: float64(s.Sensor.HumFrequency),
+			Converter:    chain.Converter{Bits: int(s.Sensor.Bits), Range: float64(s.Sensor.Range)},
+			Sticks:       float64(s.Sensor.Sticks),
+		},
+		Lag:      float64(s.Output.Lag),
+		Duration: float64(s.Run.Duration),
+		WarmUp:   float64(s.Run.WarmUp),
+		Seed:     uint64(s.Run.Seed),
 		Tolerance: trial.Tolerance{
 			Barrier:     float64(s.Tolerance.Barrier),
 			Temperature: float64(s.Tolerance.Temperature),

@@ -106,7 +106,13 @@ func (o *Observer) crossings(rows [][]float64, total []float64) (Crossings, Iden
 		c.RawDwells[level] = dwell(v[k], plain[k], int64(whole[sumRaw+level]))
 	}
 	if raw > 0 {
-		c.MeanLatency = whole[sumLatency] / float64(raw)
+		h := o.latencies
+		c.Latency = Latency{
+			Mean:   whole[sumLatency] / float64(raw),
+			Median: float64(h.ValueAtQuantile(50)) * latencyUnit,
+			P99:    float64(h.ValueAtQuantile(99)) * latencyUnit,
+			Max:    float64(h.Max()) * latencyUnit,
+		}
 	}
 	work := -2 * o.ref.Oscillator.Stiffness * o.ref.HalfDistance / o.ref.Oscillator.KT // of an overshoot of 1 m, kT
 	c.MeasuredEnergy = c.MeasuredOvershoot.Scale(work)

@@ -12,6 +12,8 @@ import (
 	"fmt"
 	"math"
 
+	hdrhistogram "github.com/HdrHistogram/hdrhistogram-go"
+
 	"brinkwell/controller/estimate"
 	"brinkwell/controller/trace"
 	"brinkwell/plant/motion"
@@ -25,6 +27,8 @@ type Reference struct {
 	HalfDistance float64 // x1, from the midpoint to either well, m
 	Threshold    float64 // x0, from the midpoint, m
 	SensorNoise  float64 // known standard deviation of one sample, m
+	SensorCorner float64 // bandwidth of that noise, Hz; 0: white
+	LostTicks    bool    // whether ticks may lack a measured position
 }
 
 // sigma is the thermal width of one well, m.
@@ -76,6 +80,12 @@ const (
 	fewestSwitches = 2
 )
 
+// Latencies are counted in picoseconds, to three digits, up to 1,000 s.
+const (
+	latencyUnit    = 1e-12 // s
+	longestLatency = 1e15
+)
+
 // An Observer takes the blocks of a run and keeps the sums that the effect is
 // computed from. It must be made by New and must not be used by two
 // goroutines at once.
@@ -89,6 +99,7 @@ type Observer struct {
 	position, measured tally
 	lagged             lagged
 	transitions        transitions
+	latencies          *hdrhistogram.Histogram
 }
 
 // New makes an Observer.
@@ -105,6 +116,7 @@ func New(ref Reference) (*Observer, error) {
 		measured:    newTally(s),
 		lagged:      newLagged(ref),
 		transitions: newTransitions(ref),
+		latencies:   hdrhistogram.New(1, longestLatency, 3),
 	}
 	return o, nil
 }
@@ -136,9 +148,13 @@ func (o *Observer) Take(b *trace.Block) error {
 // stretch books consecutive ticks that go into one row, with their events.
 func (o *Observer) stretch(start int64, samples []trace.Sample, events []trace.Event) {
 	row := o.batches.Row()
-	if o.truth {
+	switch {
+	case o.truth && !o.ref.LostTicks:
 		row[sumVelocity2] += tallyBoth(&o.position, &o.measured, samples)
-	} else {
+	case o.truth:
+		row[sumVelocity2] += o.position.tallyTrue(samples)
+		fallthrough
+	default:
 		o.measured.tallyMeasured(samples)
 	}
 	o.lagged.add(start, samples, row)
@@ -169,7 +185,10 @@ func (o *Observer) event(e *trace.Event, row []float64) {
 	o.transitions.add(e, row)
 	side := e.Level.Sign()
 	row[sumActuations]++
-	row[sumLatency] += float64(e.Tick-e.Decided)/o.ref.Rate + e.Offset
+	latency := float64(e.Tick-e.Decided)/o.ref.Rate + e.Offset
+	row[sumLatency] += latency
+	// Beyond the histogram's reach the longest that it holds is booked.
+	_ = o.latencies.RecordValue(min(int64(math.Round(latency/latencyUnit)), longestLatency))
 	row[sumSeenOver] += side * (e.Measured - o.ref.Threshold)
 	if o.truth {
 		row[sumOvershoot] += side * (e.Position - o.ref.Threshold)

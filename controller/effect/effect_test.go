@@ -103,7 +103,7 @@ func TestActuations(t *testing.T) {
 	for _, size := range []int{1, 7, 512, 1024} {
 		o := newObserver(t, r)
 		deliver(t, o, trace.Lower, samples, events, size)
-		latency := o.Result().Crossings.MeanLatency
+		latency := o.Result().Crossings.Latency.Mean
 		c := make([]float64, crossingQuantities)
 		o.crossingsOf(c, estimate.Totals(o.batches.Rows()))
 		for _, tt := range []struct {

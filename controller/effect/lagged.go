@@ -36,6 +36,10 @@ func (l *lagged) add(start int64, samples []trace.Sample, row []float64) {
 	first := ((-start)%l.ticks + l.ticks) % l.ticks // ticks before the start count below 0
 	for i := first; i < int64(len(samples)); i += l.ticks {
 		x := samples[i].Measured
+		if math.IsNaN(x) { // lost
+			l.filled = 0
+			continue
+		}
 		if l.filled == 2 {
 			d1, d2 := x-l.previous[1], x-l.previous[0]
 			row[sumPairs]++
@@ -51,8 +55,13 @@ func (l *lagged) add(start int64, samples []trace.Sample, row []float64) {
 // temperature returns the kinetic temperature over the bath's from the mean
 // squared differences, m²: the exact correlation ρ of a thermal oscillator
 // gives <(x(t)-x(0))²> = 2·(kT/k)·(1-ρ(t)) + 2·s², and the difference of the
-// two lags is free of s.
+// two lags is free of s. Noise of a limited bandwidth f_c correlates, as
+// e^{-2π·f_c·t}, and what that leaves of it is taken off.
 func (l *lagged) temperature(r Reference, diff1, diff2 float64) float64 {
 	o := r.Oscillator
+	if r.SensorCorner > 0 {
+		decay := math.Exp(-2 * math.Pi * r.SensorCorner * l.seconds)
+		diff2 -= 2 * r.SensorNoise * r.SensorNoise * decay * (1 - decay)
+	}
 	return (diff2 - diff1) / (2 * o.KT / o.Stiffness * (o.Correlation(l.seconds) - o.Correlation(2*l.seconds)))
 }

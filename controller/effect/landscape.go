@@ -212,7 +212,10 @@ func (r *reader) read(dst, row []float64) {
 
 // readMoments computes what needs no fit.
 func (r *reader) readMoments(dst, row, moments, hist []float64) {
-	ticks := row[sumTicks]
+	var ticks float64 // with a position
+	for _, n := range hist {
+		ticks += n
+	}
 	if ticks == 0 {
 		return
 	}
@@ -245,7 +248,7 @@ func (r *reader) readMoments(dst, row, moments, hist []float64) {
 	switch {
 	case !r.measured:
 		o := r.ref.Oscillator
-		dst[kinetic] = row[sumVelocity2] / ticks * o.Mass() / o.KT
+		dst[kinetic] = row[sumVelocity2] / row[sumTicks] * o.Mass() / o.KT
 	case row[sumPairs] > 0 && r.lagged.reason == "":
 		dst[kinetic] = r.lagged.temperature(r.ref, row[sumDiff1]/row[sumPairs], row[sumDiff2]/row[sumPairs])
 	}

@@ -22,11 +22,15 @@ type Crossings struct {
 	Energy            estimate.Value               // U_new - U_old at an actuation, kT
 	Power             estimate.Value               // the loop's, into the resonator, kT/s
 	ChatterFraction   estimate.Value               // share of actuations that did not settle
-	MeanLatency       float64                      // from a sample to what it decided, s; 0 without actuations
-	MeasuredOvershoot estimate.Value               // Overshoot by measured positions, m
-	MeasuredEnergy    estimate.Value               // Energy by measured positions, kT
-	MeasuredPower     estimate.Value               // Power by measured positions, kT/s
+	Latency           Latency
+	MeasuredOvershoot estimate.Value // Overshoot by measured positions, m
+	MeasuredEnergy    estimate.Value // Energy by measured positions, kT
+	MeasuredPower     estimate.Value // Power by measured positions, kT/s
 }
+
+// A Latency is how long after their samples actuations were, s; 0 without
+// actuations. Its percentiles are known to three digits.
+type Latency struct{ Mean, Median, P99, Max float64 }
 
 // An Identity is the stationary energy balance of a thermal oscillator and
 // the loop: T_kin/T = 1 + Q·P/(omega0·kT), whatever the potential.

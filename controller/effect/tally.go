@@ -79,12 +79,30 @@ func tallyBoth(position, measured *tally, samples []trace.Sample) (velocity2 flo
 	return velocity2
 }
 
-// tallyMeasured adds the measured positions where they are all that is known.
+// tallyMeasured adds the measured positions alone; lost ones, which are no
+// numbers, are left out.
 func (t *tally) tallyMeasured(samples []trace.Sample) {
+	t.tallyOne(samples, func(s *trace.Sample) float64 { return s.Measured })
+}
+
+// tallyTrue adds the true positions alone and returns the sum of the squared
+// velocities, m²/s².
+func (t *tally) tallyTrue(samples []trace.Sample) (velocity2 float64) {
+	t.tallyOne(samples, func(s *trace.Sample) float64 { return s.Position })
+	for i := range samples {
+		velocity2 += samples[i].Velocity * samples[i].Velocity
+	}
+	return velocity2
+}
+
+func (t *tally) tallyOne(samples []trace.Sample, of func(*trace.Sample) float64) {
 	counts, x0, per, half := t.counts, t.scale.threshold, t.scale.perMetre, float64(t.scale.half)
 	var sumAbs, sum, square, signed float64
 	for i := range samples {
-		d := samples[i].Measured - x0
+		d := of(&samples[i]) - x0
+		if math.IsNaN(d) {
+			continue
+		}
 		a := math.Abs(d)
 		sumAbs += a
 		sum += d

@@ -9,6 +9,7 @@ import (
 	"pgregory.net/rapid"
 
 	"brinkwell/controller/trial"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -38,7 +39,7 @@ func TestAnyBenchReports(t *testing.T) {
 			Rate:         rate,
 			HalfBand:     orZero(0.19*x1*rapid.Float64Range(0, 1).Draw(t, "half band"), "half band"),
 			Latency:      orZero(slow*decade(-3, 2, "latency"), "latency"),
-			NoiseDensity: orZero(sigma*decade(-3, 2, "noise")/math.Sqrt(rate/2), "noise"),
+			Sensor:       chain.SensorConfig{Density: orZero(sigma*decade(-3, 2, "noise")/math.Sqrt(rate/2), "noise")},
 			Duration:     math.Ceil(decade(0, 5, "duration")) / rate,
 			WarmUp:       10 / rate,
 			Seed:         rapid.Uint64().Draw(t, "seed"),

@@ -104,7 +104,10 @@ type Crossings struct {
 type Loop struct {
 	Rate               float64  `json:"rate_Hz"`
 	LatencyAsked       float64  `json:"latency_asked_s"`
-	LatencyMean        *float64 `json:"latency_mean_s"` // null without an actuation
+	LatencyMean        *float64 `json:"latency_mean_s"` // these are null without an actuation
+	LatencyMedian      *float64 `json:"latency_p50_s"`
+	LatencyP99         *float64 `json:"latency_p99_s"`
+	LatencyMax         *float64 `json:"latency_max_s"`
 	SensorNoise        float64  `json:"sensor_noise_m"` // standard deviation of one sample
 	MeasuredSeconds    float64  `json:"measured_s"`
 	WallSeconds        float64  `json:"wall_s"`
@@ -144,8 +147,8 @@ func (t *Trial) report(done int64, wall time.Duration) Report {
 		}},
 		Seed: c.Seed, Ticks: done, Notes: append([]string{}, t.Warnings()...),
 	}
-	if l := e.Crossings.MeanLatency; e.Crossings.Count > 0 {
-		r.Loop.LatencyMean = &l
+	if l := e.Crossings.Latency; e.Crossings.Count > 0 {
+		r.Loop.LatencyMean, r.Loop.LatencyMedian, r.Loop.LatencyP99, r.Loop.LatencyMax = &l.Mean, &l.Median, &l.P99, &l.Max
 	}
 	if wall > 0 {
 		r.Loop.TicksPerWallSecond = float64(done) / wall.Seconds()

@@ -30,10 +30,14 @@ type Config struct {
 	Threshold    float64 // from the midpoint, m
 	Rate         float64 // ticks, 1/s
 	HalfBand     float64 // half the comparator's dead band, m
-	Latency      float64 // from a sample to the actuation that it decides, s
-	NoiseDensity float64 // of the sensor, one-sided, m/√Hz
-	Duration     float64 // measured, without WarmUp, s
-	WarmUp       float64 // s
+	Latency      float64 // mean, from a sample to the actuation that it decides, s
+	Jitter       float64 // standard deviation of the latency, s
+	Shape        chain.Shape
+	LostTicks    float64            // probability
+	Sensor       chain.SensorConfig // its Rate is set from Rate
+	Lag          float64            // time constant of the output, s
+	Duration     float64            // measured, without WarmUp, s
+	WarmUp       float64            // s
 	Seed         uint64
 	Tolerance    Tolerance
 }
@@ -45,10 +49,29 @@ type Tolerance struct {
 	Temperature float64
 }
 
-// SensorNoise is the standard deviation of one sample, m: white noise of a
-// one-sided density without a bandwidth, sampled, is folded into half the
-// rate.
-func (c Config) SensorNoise() float64 { return c.NoiseDensity * math.Sqrt(c.Rate/2) }
+// sensor is the sensor at the bench's rate.
+func (c Config) sensor() chain.SensorConfig {
+	s := c.Sensor
+	s.Rate = c.Rate
+	return s
+}
+
+// SensorNoise is the standard deviation of one sample, m: of the noise behind
+// the sensor's poles, and of the rounding to whole converter steps, step²/12
+// (W.R. Bennett, Bell Syst. Tech. J. 27, 446 (1948)).
+func (c Config) SensorNoise() float64 {
+	return math.Hypot(c.sensor().NoiseSD(), c.Sensor.Converter.Step()/math.Sqrt(12))
+}
+
+// Delay is the mean time from the crossing of the threshold to where its
+// actuation acts: latency, half a tick, and the lags of sensor and output, s.
+func (c Config) Delay() float64 {
+	delay := c.Latency + 0.5/c.Rate + c.Lag
+	if c.Sensor.Bandwidth > 0 {
+		delay += 1 / (2 * math.Pi * c.Sensor.Bandwidth)
+	}
+	return delay
+}
 
 // Ticks is the measured number of ticks.
 func (c Config) Ticks() int64 { return int64(math.Round(c.Duration * c.Rate)) }
@@ -72,7 +95,7 @@ func (c Config) Case() theory.Case {
 		Quality:  c.Oscillator.Quality,
 		Barrier:  c.barrier(),
 		Offset:   c.Threshold / c.sigma(),
-		Delay:    (c.Latency + 0.5/c.Rate) * w0,
+		Delay:    c.Delay() * w0,
 		HalfBand: c.HalfBand / c.sigma(),
 		Noise:    c.SensorNoise() / c.sigma(),
 		Tick:     w0 / c.Rate,
@@ -98,7 +121,11 @@ func New(c Config) (*Trial, error) {
 		Centres:    [trace.Levels]float64{trace.Lower: -c.HalfDistance, trace.Upper: c.HalfDistance},
 		Threshold:  c.Threshold,
 		Latency:    c.Latency,
-		Sensor:     chain.SensorConfig{Density: c.NoiseDensity},
+		Jitter:     c.Jitter,
+		Shape:      c.Shape,
+		Lag:        c.Lag,
+		LostTicks:  c.LostTicks,
+		Sensor:     c.Sensor,
 		Seed:       c.Seed,
 	})
 	if err != nil {
@@ -110,6 +137,8 @@ func New(c Config) (*Trial, error) {
 		HalfDistance: c.HalfDistance,
 		Threshold:    c.Threshold,
 		SensorNoise:  c.SensorNoise(),
+		SensorCorner: c.Sensor.Bandwidth,
+		LostTicks:    c.LostTicks > 0,
 	})
 	if err != nil {
 		return nil, err

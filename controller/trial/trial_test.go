@@ -10,6 +10,7 @@ import (
 
 	"brinkwell/controller/trace"
 	"brinkwell/controller/trial"
+	"brinkwell/plant/chain"
 	"brinkwell/plant/motion"
 )
 
@@ -23,7 +24,7 @@ func demo() trial.Config {
 		Rate:         1e6,
 		HalfBand:     0.02e-9,
 		Latency:      1e-6,
-		NoiseDensity: 30e-15,
+		Sensor:       chain.SensorConfig{Density: 30e-15},
 		Duration:     4,
 		WarmUp:       0.017,
 		Seed:         1,
@@ -57,13 +58,13 @@ func TestEnergyBalance(t *testing.T) {
 		"late": func(c *trial.Config) { c.Latency = 5.25e-6 },
 		"wide": func(c *trial.Config) { c.HalfBand = 0.1e-9 },
 		"noisy": func(c *trial.Config) {
-			c.NoiseDensity = 70e-15
+			c.Sensor.Density = 70e-15
 			c.HalfBand = 0
 		},
 		"tilted":   func(c *trial.Config) { c.Threshold = 0.05e-9 },
 		"high Q":   func(c *trial.Config) { c.Oscillator.Quality = 200; c.HalfDistance *= 0.7; c.Duration = 20 },
 		"instant":  func(c *trial.Config) { c.Latency = 0 },
-		"no noise": func(c *trial.Config) { c.NoiseDensity = 0 },
+		"no noise": func(c *trial.Config) { c.Sensor.Density = 0 },
 	} {
 		t.Run(name, func(t *testing.T) {
 			t.Parallel()
@@ -94,7 +95,7 @@ func TestTemperatureThroughNoise(t *testing.T) {
 		t.Skip("statistical")
 	}
 	c := demo()
-	c.NoiseDensity = 150e-15
+	c.Sensor.Density = 150e-15
 	r := runTrial(t, context.Background(), c)
 	seen, real := r.Measured.KineticTemperature, r.Realised.KineticTemperature
 	// Noise adds error to the measured one alone, and the kink of the potential
@@ -205,7 +206,7 @@ func TestAskedIsWhatAPerfectLoopShows(t *testing.T) {
 	}
 	c := demo()
 	c.Oscillator.Quality = 3
-	c.Latency, c.HalfBand, c.NoiseDensity, c.Rate = 0, 0, 0, 2e6
+	c.Latency, c.HalfBand, c.Sensor.Density, c.Rate = 0, 0, 0, 2e6
 	c.HalfDistance *= 0.7
 	c.Threshold = 0.03e-9
 	r := runTrial(t, context.Background(), c)
