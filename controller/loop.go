@@ -38,6 +38,8 @@ type Config struct {
 	Sensor     Sensor
 	Actuator   Actuator
 	Comparator switching.Comparator // its Level is set from the Actuator's
+	HoldOff    int64                // ticks between two changes of level, at least; see switching.NewDecider
+	Keeper     *switching.Keeper    // of the threshold; nil for none
 	Truth      bool                 // whether the Sensor knows true positions
 	First      int64                // number of the first tick
 }
@@ -52,13 +54,16 @@ const blockTicks = 1024
 type Loop struct {
 	sensor     Sensor
 	actuator   Actuator
-	comparator switching.Comparator
+	comparator switching.Comparator // its Level is the one last commanded
+	decider    *switching.Decider   // decides in the comparator's place; nil where the comparator alone does
+	keeper     *switching.Keeper
 	tick       int64
 	force      trace.Level // level in force after the events seen so far
 	block      trace.Block
 }
 
-// New makes a Loop. It panics if c lacks a Sensor or an Actuator.
+// New makes a Loop. It panics if c lacks a Sensor or an Actuator, or has a
+// negative HoldOff.
 func New(c Config) *Loop {
 	if c.Sensor == nil || c.Actuator == nil {
 		panic("controller: a loop needs a sensor and an actuator")
@@ -71,12 +76,25 @@ func New(c Config) *Loop {
 		force:      c.Actuator.Level(),
 	}
 	l.comparator.Level = l.force
+	if c.HoldOff != 0 || c.Keeper != nil {
+		l.keeper = c.Keeper
+		l.decider = switching.NewDecider(l.comparator, c.HoldOff, c.Keeper)
+	}
 	l.block = trace.Block{
 		Truth:   c.Truth,
 		Samples: make([]trace.Sample, blockTicks),
 		Events:  make([]trace.Event, 0, blockTicks+1),
 	}
 	return l
+}
+
+// Threshold tells how the threshold travelled so far, warm-up included: not
+// at all without a Keeper.
+func (l *Loop) Threshold() switching.KeeperState {
+	if l.keeper == nil {
+		return switching.KeeperState{}
+	}
+	return l.keeper.State()
 }
 
 // Run runs the loop for a number of ticks and hands each block to the sinks.
@@ -120,16 +138,20 @@ func (l *Loop) deliver(n int, sinks []trace.Sink) error {
 
 // run fills samples, one a tick, and returns how many it filled.
 func (l *Loop) run(samples []trace.Sample) (n int, err error) {
-	sensor, c := l.sensor, l.comparator
+	sensor, c, decider := l.sensor, l.comparator, l.decider
 	tick, level := l.tick, c.Level
 	for i := range samples {
 		s := &samples[i]
 		if err = sensor.Sense(tick, s); err != nil {
 			break
 		}
-		if s.Level = c.Decide(s.Measured); s.Level != level {
+		if decider == nil { // spares a plain comparator the call
+			s.Level = c.Decide(s.Measured)
+		} else {
+			s.Level = decider.Decide(s.Measured)
+		}
+		if s.Level != level {
 			if err = l.actuator.Actuate(tick, s.Level); err != nil {
-				c.Level = level // not commanded: a later Run decides it anew
 				break
 			}
 			level = s.Level
@@ -137,8 +159,11 @@ func (l *Loop) run(samples []trace.Sample) (n int, err error) {
 		tick++
 	}
 	n = int(tick - l.tick)
-	l.tick, l.comparator = tick, c
+	l.tick, l.comparator.Level = tick, level
 	if err != nil {
+		if decider != nil {
+			decider.Restore(level) // not commanded: a later Run decides it anew
+		}
 		err = fmt.Errorf("tick %d: %w", tick, err)
 	}
 	return n, err

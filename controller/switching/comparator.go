@@ -1,7 +1,8 @@
-// Package switching decides from a position which level to apply.
+// Package switching decides from a position which level to apply, when it may
+// change again, and where the threshold is to be while the sensor drifts.
 //
-// It knows positions and levels, nothing of time, plants or boards; the code
-// that a bench tests is the code that drives a board.
+// It knows positions, levels and ticks, nothing of clocks, plants or boards;
+// the code that a bench tests is the code that drives a board.
 package switching
 
 import "brinkwell/controller/trace"

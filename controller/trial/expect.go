@@ -13,7 +13,16 @@ type Predicted struct {
 	Regime             string   `json:"regime"`
 	InsideRange        bool     `json:"inside_range"`
 	OutsideBecause     []string `json:"outside_because"`
+	Delay              float64  `json:"effective_delay_s"` // latency, half a tick, lags
 	KineticTemperature float64  `json:"kinetic_temperature_ratio"`
+	Distance           float64  `json:"distance_m"`
+	Stiffness          float64  `json:"stiffness_N_per_m"`
+	Tilt               float64  `json:"tilt_kT"`
+	MeanAbsPosition    float64  `json:"mean_abs_position_m"`
+	Barrier            *float64 `json:"barrier_kT"` // as noise leaves it; null outside its range
+	BarrierOutside     []string `json:"barrier_outside_because"`
+	EscapeRateLow      *float64 `json:"escape_rate_low_per_s"`  // from well to well of the ideal potential …
+	EscapeRateHigh     *float64 `json:"escape_rate_high_per_s"` // … between these; null where no theory brackets it
 	UpperShare         float64  `json:"upper_share"`
 	Count              float64  `json:"count"` // actuations in the run
 	Rate               float64  `json:"rate_per_s"`
@@ -37,10 +46,16 @@ func (c Config) predict() *Predicted {
 		return &Predicted{Regime: "none", OutsideBecause: []string{err.Error()}, RatesOutside: []string{err.Error()}}
 	}
 	w0, sigma := c.Oscillator.Omega0, c.sigma()
+	lacks := c.beyondTheory()
 	e := &Predicted{
 		Regime:             string(p.Regime),
-		InsideRange:        p.Range.Inside(),
-		OutsideBecause:     append([]string{}, p.Range.Reasons...),
+		InsideRange:        p.Range.Inside() && len(lacks) == 0,
+		OutsideBecause:     append(append([]string{}, lacks...), p.Range.Reasons...),
+		Delay:              c.Delay(),
+		Distance:           2 * c.HalfDistance,
+		Stiffness:          c.Oscillator.Stiffness,
+		Tilt:               2 * math.Sqrt(2*c.barrier()) * c.Case().Offset,
+		MeanAbsPosition:    c.Case().Well().MeanAbs(p.Temperature) * sigma,
 		KineticTemperature: p.Temperature,
 		UpperShare:         p.UpperOccupation,
 		Count:              p.SwitchRate * w0 * c.Duration,
@@ -50,9 +65,11 @@ func (c Config) predict() *Predicted {
 		Overshoot:          p.Overshoot * sigma,
 		Energy:             p.EnergyPerSwitch,
 		Power:              p.Power * w0,
-		RatesInsideRange:   p.RatesRange.Inside(),
-		RatesOutside:       append([]string{}, p.RatesRange.Reasons...),
+		RatesInsideRange:   p.RatesRange.Inside() && len(lacks) == 0,
+		RatesOutside:       append(append([]string{}, lacks...), p.RatesRange.Reasons...),
 	}
+	e.expectBarrier(c)
+	e.expectEscape(c)
 	if e.SettledRate > 0 && e.Rate > 0 {
 		// Either well is left half as often as there are transitions.
 		e.MeanDwellLower = (1 - e.UpperShare) * 2 / e.SettledRate
@@ -60,6 +77,36 @@ func (c Config) predict() *Predicted {
 		e.ChatterFraction = math.Max(0, 1-e.SettledRate/e.Rate)
 	}
 	return e
+}
+
+// expectBarrier expects the barrier that noise in the deciding sample leaves,
+// where noise is what rounds the top of it.
+func (e *Predicted) expectBarrier(c Config) {
+	k := c.Case()
+	barrier, r := theory.NoisyBarrier(k.Barrier, k.Noise)
+	e.BarrierOutside = append(c.beyondTheory(), r.Reasons...)
+	if k.HalfBand > 0.2*k.Noise {
+		e.BarrierOutside = append(e.BarrierOutside, fmt.Sprintf("half band of %.3g sigma above a fifth of the noise, %.3g sigma", k.HalfBand, k.Noise))
+	}
+	if k.Delay > 0.2*k.Noise && k.Delay > 0.02 {
+		e.BarrierOutside = append(e.BarrierOutside, fmt.Sprintf("delay of %.3g/omega0 above 0.02/omega0 and a fifth of the noise, %.3g sigma", k.Delay, k.Noise))
+	}
+	if k.Offset != 0 {
+		e.BarrierOutside = append(e.BarrierOutside, "the wells are tilted")
+	}
+	if len(e.BarrierOutside) == 0 {
+		e.Barrier = &barrier
+	}
+}
+
+// expectEscape brackets the escape rate of the ideal wells.
+func (e *Predicted) expectEscape(c Config) {
+	k := c.Case()
+	b := theory.EscapeRate(k.Quality, k.Barrier)
+	if b.Range.Inside() && k.Offset == 0 {
+		low, high := b.Low*c.Oscillator.Omega0, b.High*c.Oscillator.Omega0
+		e.EscapeRateLow, e.EscapeRateHigh = &low, &high
+	}
 }
 
 // fewCrossings is where a run shows too little of the density at the threshold

@@ -15,7 +15,6 @@ import (
 	"brinkwell/controller"
 	"brinkwell/controller/effect"
 	"brinkwell/controller/switching"
-	"brinkwell/controller/theory"
 	"brinkwell/controller/trace"
 	"brinkwell/plant"
 	"brinkwell/plant/chain"
@@ -34,6 +33,8 @@ type Config struct {
 	Jitter       float64 // standard deviation of the latency, s
 	Shape        chain.Shape
 	LostTicks    float64            // probability
+	HoldOff      float64            // after a decision, s
+	KeepMidpoint bool               // whether the threshold follows the midpoint of the two mean positions
 	Sensor       chain.SensorConfig // its Rate is set from Rate
 	Lag          float64            // time constant of the output, s
 	Duration     float64            // measured, without WarmUp, s
@@ -63,16 +64,6 @@ func (c Config) SensorNoise() float64 {
 	return math.Hypot(c.sensor().NoiseSD(), c.Sensor.Converter.Step()/math.Sqrt(12))
 }
 
-// Delay is the mean time from the crossing of the threshold to where its
-// actuation acts: latency, half a tick, and the lags of sensor and output, s.
-func (c Config) Delay() float64 {
-	delay := c.Latency + 0.5/c.Rate + c.Lag
-	if c.Sensor.Bandwidth > 0 {
-		delay += 1 / (2 * math.Pi * c.Sensor.Bandwidth)
-	}
-	return delay
-}
-
 // Ticks is the measured number of ticks.
 func (c Config) Ticks() int64 { return int64(math.Round(c.Duration * c.Rate)) }
 
@@ -86,20 +77,6 @@ func (c Config) sigma() float64 { return math.Sqrt(c.Oscillator.KT / c.Oscillato
 func (c Config) barrier() float64 {
 	a := c.HalfDistance / c.sigma()
 	return a * a / 2
-}
-
-// Case is the bench in the reduced units of the predictions.
-func (c Config) Case() theory.Case {
-	w0 := c.Oscillator.Omega0
-	return theory.Case{
-		Quality:  c.Oscillator.Quality,
-		Barrier:  c.barrier(),
-		Offset:   c.Threshold / c.sigma(),
-		Delay:    c.Delay() * w0,
-		HalfBand: c.HalfBand / c.sigma(),
-		Noise:    c.SensorNoise() / c.sigma(),
-		Tick:     w0 / c.Rate,
-	}
 }
 
 // A Trial is a bench that is ready to run once. It must be made by New.
