@@ -25,6 +25,7 @@ import (
 type benchFlags struct {
 	set          []string
 	json         string
+	compare      string
 	showSettings bool
 	beyondRange  bool
 }
@@ -59,6 +60,7 @@ The exit code is 1 when the realised barrier or temperature is outside
 	}
 	c.Flags().StringArrayVar(&f.set, "set", nil, "set one `KEY=VALUE`, such as loop.latency=3us; may be repeated")
 	c.Flags().StringVar(&f.json, "json", "", "write the report as JSON to `FILE`; - for standard output, the text then goes to standard error")
+	c.Flags().StringVar(&f.compare, "compare", "", "run the same bench at several values of one key, `KEY=V1,V2,...`, and show the differences")
 	c.Flags().BoolVar(&f.showSettings, "show-settings", false, "print the resolved settings as a file that can be used again, and run nothing")
 	c.Flags().BoolVar(&f.beyondRange, "beyond-range", false, "allow a latency above 1/8 of a period, where the loop may oscillate by itself")
 	return c
@@ -66,7 +68,13 @@ The exit code is 1 when the realised barrier or temperature is outside
 
 // bench runs one bench and prints its report.
 func bench(sh shell, file string, f benchFlags) error {
-	s, err := settings.Load(settings.Sources{File: file, Environ: sh.environ, Set: f.set, BeyondRange: f.beyondRange})
+	src := settings.Sources{File: file, Environ: sh.environ, Set: f.set, BeyondRange: f.beyondRange}
+	ctx, stop := interruptible()
+	defer stop()
+	if f.compare != "" && !f.showSettings {
+		return compareBench(ctx, sh, src, f)
+	}
+	s, err := settings.Load(src)
 	if err != nil {
 		return &exitError{exitUsage, err}
 	}
@@ -83,10 +91,6 @@ func bench(sh shell, file string, f benchFlags) error {
 	for _, n := range append(s.Warnings(), t.Warnings()...) {
 		fmt.Fprintf(sh.err, "note: %s\n", n)
 	}
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
-	defer stop()
-	// A second Ctrl-C ends the program at once.
-	context.AfterFunc(ctx, stop)
 	progress, finish := terminalProgress(sh.err)
 	report, err := t.Run(ctx, progress)
 	finish()
@@ -97,6 +101,19 @@ func bench(sh shell, file string, f benchFlags) error {
 	if report.Settings, err = settingsTable(s); err != nil {
 		return &exitError{exitFailed, err}
 	}
+	return show(sh, f, report)
+}
+
+// interruptible returns a context that ends with the first Ctrl-C or SIGTERM;
+// the second one ends the program at once.
+func interruptible() (ctx context.Context, stop func()) {
+	ctx, stop = signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
+	context.AfterFunc(ctx, stop)
+	return ctx, stop
+}
+
+// show prints a report and writes it where that was asked.
+func show(sh shell, f benchFlags, report trial.Report) error {
 	text := sh.out
 	if f.json == "-" {
 		text = sh.err

@@ -3,8 +3,6 @@ package effect
 import (
 	"math"
 
-	"gonum.org/v1/gonum/stat/distuv"
-
 	"brinkwell/controller/estimate"
 	"brinkwell/controller/trace"
 )
@@ -159,9 +157,6 @@ func clamp(v estimate.Value, low, high float64) estimate.Value {
 
 func identity(v []estimate.Value) Identity {
 	i := Identity{Kinetic: v[balanceKinetic], FromPower: v[balancePower], Difference: v[balance]}
-	if d := i.Difference; d.Known() && d.Half() > 0 {
-		normal := distuv.UnitNormal.Quantile((1 + estimate.Confidence) / 2)
-		i.Sigmas = d.Value / (d.Half() / normal)
-	}
+	i.Sigmas = sigmas(i.Difference)
 	return i
 }

@@ -63,8 +63,7 @@ type Result struct {
 
 // Result computes the effect from what was taken so far.
 func (o *Observer) Result() Result {
-	o.flush(o.batches.Row())
-	rows := o.batches.Rows()
+	rows := o.ended()
 	total := estimate.Totals(rows)
 	if total == nil {
 		total = make([]float64, sumsOfTheRun+2*(momentSums+o.scale.bins))
@@ -113,14 +112,7 @@ func (o *Observer) landscape(rows [][]float64, total []float64, measured bool) L
 	why(kinetic, o.lagged.reason)
 	why(width, "the wells are too shallow for a width on one side of the threshold")
 
-	l := Landscape{
-		Barrier: v[barrier], BarrierFromParabolas: v[barrierParabolas], Distance: v[distance], Stiffness: v[stiffness],
-		Tilt: v[tilt], KineticTemperature: v[kinetic], WidthTemperature: v[width], MeanAbsPosition: v[meanAbs],
-		DensityAtThreshold: v[density], UpperShare: v[share],
-	}
-	copy(l.Barriers[:], v[barriers:])
-	copy(l.Centres[:], v[centres:])
-	copy(l.Stiffnesses[:], v[stiffnesses:])
+	l := arrange(v)
 	for k, first := range r.curve {
 		middle := float64(first-o.scale.half) + curveBins/2.0
 		l.Curve = append(l.Curve, CurvePoint{
@@ -129,6 +121,25 @@ func (o *Observer) landscape(rows [][]float64, total []float64, measured bool) L
 		})
 	}
 	return l
+}
+
+// arrange puts a reader's quantities in their places.
+func arrange(v []estimate.Value) Landscape {
+	l := Landscape{
+		Barrier: v[barrier], BarrierFromParabolas: v[barrierParabolas], Distance: v[distance], Stiffness: v[stiffness],
+		Tilt: v[tilt], KineticTemperature: v[kinetic], WidthTemperature: v[width], MeanAbsPosition: v[meanAbs],
+		DensityAtThreshold: v[density], UpperShare: v[share],
+	}
+	copy(l.Barriers[:], v[barriers:])
+	copy(l.Centres[:], v[centres:])
+	copy(l.Stiffnesses[:], v[stiffnesses:])
+	return l
+}
+
+// ended returns the rows with all that was taken in them.
+func (o *Observer) ended() [][]float64 {
+	o.flush(o.batches.Row())
+	return o.batches.Rows()
 }
 
 func unknownLandscape(reason string) Landscape {
