@@ -88,9 +88,8 @@ func bench(sh shell, file string, f benchFlags) error {
 	if err != nil {
 		return &exitError{exitUsage, err}
 	}
-	for _, n := range append(s.Warnings(), t.Warnings()...) {
-		fmt.Fprintf(sh.err, "note: %s\n", n)
-	}
+	warnings := append(s.Warnings(), t.Warnings()...)
+	tellNotes(sh, warnings)
 	progress, finish := terminalProgress(sh.err)
 	report, err := t.Run(ctx, progress)
 	finish()
@@ -98,10 +97,18 @@ func bench(sh shell, file string, f benchFlags) error {
 		return &exitError{exitFailed, err}
 	}
 	report.Notes = append(s.Warnings(), report.Notes...)
+	tellNotes(sh, report.Notes[len(warnings):]) // what only the run showed
 	if report.Settings, err = settingsTable(s); err != nil {
 		return &exitError{exitFailed, err}
 	}
 	return show(sh, f, report)
+}
+
+// tellNotes says what a person should know beside the report.
+func tellNotes(sh shell, notes []string) {
+	for _, n := range notes {
+		fmt.Fprintf(sh.err, "note: %s\n", n)
+	}
 }
 
 // interruptible returns a context that ends with the first Ctrl-C or SIGTERM;

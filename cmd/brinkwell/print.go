@@ -126,6 +126,10 @@ func printChecks(w io.Writer, r trial.Report) {
 	realised := "none realised, no actuation"
 	if r.Loop.LatencyMean != nil {
 		realised = quantity(*r.Loop.LatencyMean, "s") + " realised on average"
+		if max := *r.Loop.LatencyMax; max > *r.Loop.LatencyMean*1.001 {
+			realised += fmt.Sprintf(" (half below %s, 99 %% below %s, longest %s)",
+				quantity(*r.Loop.LatencyMedian, "s"), quantity(*r.Loop.LatencyP99, "s"), quantity(max, "s"))
+		}
 	}
 	fmt.Fprintf(w, "loop: latency %s asked, %s; %.3g ticks a second of wall time\n\n",
 		quantity(r.Loop.LatencyAsked, "s"), realised, r.Loop.TicksPerWallSecond)

@@ -96,8 +96,13 @@ func (o *Observer) landscape(rows [][]float64, total []float64, measured bool) L
 	if whole[share] == 0 || whole[share] == 1 {
 		v[share] = estimate.Unknown("only one side of the threshold was visited in the run")
 	}
-	const oneSided = "only one side of the threshold was visited long enough"
-	why(barrier, "the threshold was not crossed often enough to show the density there; see the barrier from the parabolas")
+	oneSided := "only one side of the threshold was visited long enough"
+	unvisited := "the threshold was not crossed often enough to show the density there; see the barrier from the parabolas"
+	if math.IsNaN(whole[stiffness]) && total[sumTicks] > 0 {
+		oneSided = "the position's distribution has no bottom of a well that a parabola fits"
+		unvisited = oneSided
+	}
+	why(barrier, unvisited)
 	for side := range trace.Level(trace.Levels) {
 		unseen := fmt.Sprintf("the %s well was not visited long enough, or has no bottom of its own", side)
 		for _, k := range []int{centres, stiffnesses} {

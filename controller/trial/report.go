@@ -1,6 +1,7 @@
 package trial
 
 import (
+	"fmt"
 	"math"
 	"time"
 
@@ -153,9 +154,18 @@ func (t *Trial) report(done int64, wall time.Duration) Report {
 	if wall > 0 {
 		r.Loop.TicksPerWallSecond = float64(done) / wall.Seconds()
 	}
+	if x := r.Realised.MeanAbsPosition; x.Known() && x.Low > farOut*r.Asked.MeanAbsPosition {
+		r.Notes = append(r.Notes, fmt.Sprintf(
+			"the resonator swings far beyond the wells, <|x - threshold|> is %.2g times what was asked: the loop feeds it, as one with an inverted sensor or too long a delay does",
+			x.Value/r.Asked.MeanAbsPosition))
+	}
 	r.Verdict = c.Tolerance.judge(r.Asked, r.Realised)
 	return r
 }
+
+// farOut is how many times further out than asked a resonator is on average
+// when its loop feeds it.
+const farOut = 1.5
 
 // asked is what was asked, with what a perfect loop would show.
 func (c Config) asked() Asked {
