@@ -33,7 +33,7 @@ func (b bench) oscillator() motion.Oscillator {
 	return motion.Oscillator{Omega0: 1, Quality: b.quality, Stiffness: 1, KT: 1}
 }
 
-func (b bench) loop(t testing.TB) *controller.Loop {
+func (b bench) plant(t testing.TB) *plant.Plant {
 	t.Helper()
 	a := b.centre()
 	p, err := plant.New(plant.Config{
@@ -48,6 +48,12 @@ func (b bench) loop(t testing.TB) *controller.Loop {
 	if err != nil {
 		t.Fatal(err)
 	}
+	return p
+}
+
+func (b bench) loop(t testing.TB) *controller.Loop {
+	t.Helper()
+	p := b.plant(t)
 	return controller.New(controller.Config{
 		Sensor:     p,
 		Actuator:   p,

@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"context"
 	"encoding/json"
+	"fmt"
 	"math"
 	"strings"
 	"testing"
@@ -225,6 +226,40 @@ func TestAskedIsWhatAPerfectLoopShows(t *testing.T) {
 	} {
 		if !tt.holds {
 			t.Errorf("%s: the interval does not hold what was asked", tt.name)
+		}
+	}
+}
+
+// Predicted and simulated temperature agree within 0.01 over qualities,
+// barriers and latencies, at the demo's frequency and rate. The simulated one
+// is from the power, 1 + Q·P/(omega0·kT), which is far less noisy than <v²>;
+// half its interval is allowed for beside the 0.01.
+func TestPredictionGrid(t *testing.T) {
+	if testing.Short() {
+		t.Skip("statistical")
+	}
+	for _, quality := range []float64{5, 20, 100, 500} {
+		for _, barrier := range []float64{2, 4} {
+			for _, latency := range []float64{0, 2e-6, 6e-6} {
+				t.Run(fmt.Sprintf("Q=%g/b=%g/latency=%gus", quality, barrier, latency*1e6), func(t *testing.T) {
+					t.Parallel()
+					c := demo()
+					c.Oscillator.Quality = quality
+					c.HalfDistance = math.Sqrt(2 * barrier * c.Oscillator.KT / c.Oscillator.Stiffness)
+					c.Latency, c.HalfBand, c.Sensor.Density = latency, 0, 0
+					c.Duration = 2 + 0.1*quality // s; a narrow resonance takes its time
+					c.WarmUp = 20 * quality / c.Oscillator.Omega0
+					r := runTrial(t, context.Background(), c)
+					if !r.Predicted.InsideRange {
+						t.Fatalf("no prediction: %v", r.Predicted.OutsideBecause)
+					}
+					got := r.Checks.StationaryIdentity.FromPower
+					if !(math.Abs(got.Value-r.Predicted.KineticTemperature) <= 0.01+got.Half()) {
+						t.Errorf("simulated %.4f ± %.4f, predicted %.4f", got.Value, got.Half(), r.Predicted.KineticTemperature)
+					}
+					t.Logf("simulated %.4f ± %.4f, predicted %.4f", got.Value, got.Half(), r.Predicted.KineticTemperature)
+				})
+			}
 		}
 	}
 }
