@@ -158,6 +158,8 @@ func trialConfig(s settings.Settings) trial.Config {
 		Jitter:       float64(s.Loop.Jitter),
 		Shape:        chain.Shape(s.Loop.JitterShape),
 		LostTicks:    float64(s.Loop.LostTicks),
+		HoldOff:      float64(s.Loop.HoldOff),
+		KeepMidpoint: s.Loop.KeepThreshold == "midpoint",
 		Sensor: chain.SensorConfig{
 			Density:      float64(s.Sensor.Noise),
 			Bandwidth:    float64(s.Sensor.Bandwidth),

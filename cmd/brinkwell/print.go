@@ -131,8 +131,17 @@ func printChecks(w io.Writer, r trial.Report) {
 				quantity(*r.Loop.LatencyMedian, "s"), quantity(*r.Loop.LatencyP99, "s"), quantity(max, "s"))
 		}
 	}
-	fmt.Fprintf(w, "loop: latency %s asked, %s; %.3g ticks a second of wall time\n\n",
+	fmt.Fprintf(w, "loop: latency %s asked, %s; %.3g ticks a second of wall time\n",
 		quantity(r.Loop.LatencyAsked, "s"), realised, r.Loop.TicksPerWallSecond)
+	if t := r.Loop.ThresholdTravel; t != nil {
+		fmt.Fprintf(w, "threshold: kept, now %s from what was asked, between %s and %s on the way; frozen for %.2g %% of the time",
+			quantity(t.Present, "m"), quantity(t.Lowest, "m"), quantity(t.Highest, "m"), 100*t.Frozen)
+		if t.Bounded {
+			fmt.Fprint(w, "; its bound was reached")
+		}
+		fmt.Fprintln(w)
+	}
+	fmt.Fprintln(w)
 }
 
 func printVerdict(w io.Writer, r trial.Report) {

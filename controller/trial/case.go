@@ -34,8 +34,8 @@ func (c Config) Delay() float64 {
 func (c Config) Case() theory.Case {
 	w0, gain := c.Oscillator.Omega0, 1+c.Sensor.GainError
 	offset := c.Sensor.Offset + c.Sensor.Drift*c.Duration/2
-	if c.Sensor.HighPass > 0 {
-		offset = 0
+	if c.Sensor.HighPass > 0 || c.KeepMidpoint {
+		offset = 0 // it does not reach the threshold, or the threshold follows it
 	}
 	return theory.Case{
 		Quality:  c.Oscillator.Quality,
@@ -60,7 +60,7 @@ func (c Config) beyondTheory() []string {
 	s, sigma := c.Sensor, c.sigma()
 	require(!s.Inverted, "the reading goes against the position")
 	require(s.HighPass == 0, "AC coupling (a high-pass of %.4g Hz) lets the threshold wander", s.HighPass)
-	require(math.Abs(s.Drift)*c.Duration <= 0.1*sigma, "the sensor drifts by %.3g of a well's width over the run, above 0.1", math.Abs(s.Drift)*c.Duration/sigma)
+	require(c.KeepMidpoint || math.Abs(s.Drift)*c.Duration <= 0.1*sigma, "the sensor drifts by %.3g of a well's width over the run, above 0.1", math.Abs(s.Drift)*c.Duration/sigma)
 	require(s.HumAmplitude <= 0.05*sigma, "hum of %.3g of a well's width, above 0.05, moves the threshold", s.HumAmplitude/sigma)
 	reach := math.Abs(c.Threshold-s.Offset) + c.HalfBand
 	require(s.Converter.Range == 0 || s.Converter.Range > reach, "the converter clips within the band")

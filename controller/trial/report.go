@@ -109,10 +109,20 @@ type Loop struct {
 	LatencyMedian      *float64 `json:"latency_p50_s"`
 	LatencyP99         *float64 `json:"latency_p99_s"`
 	LatencyMax         *float64 `json:"latency_max_s"`
-	SensorNoise        float64  `json:"sensor_noise_m"` // standard deviation of one sample
+	ThresholdTravel    *Travel  `json:"threshold_travel"` // null where the threshold is not kept
+	SensorNoise        float64  `json:"sensor_noise_m"`   // standard deviation of one sample
 	MeasuredSeconds    float64  `json:"measured_s"`
 	WallSeconds        float64  `json:"wall_s"`
 	TicksPerWallSecond float64  `json:"ticks_per_wall_second"`
+}
+
+// Travel is how the threshold followed the sensor's zero.
+type Travel struct {
+	Present float64 `json:"present_m"` // from the threshold that was asked
+	Lowest  float64 `json:"lowest_m"`
+	Highest float64 `json:"highest_m"`
+	Frozen  float64 `json:"frozen_share"`  // of the time, while a well was unvisited for long
+	Bounded bool    `json:"bound_reached"` // it would have gone further
 }
 
 // Checks are the report's own consistency checks.
@@ -151,6 +161,10 @@ func (t *Trial) report(done int64, wall time.Duration) Report {
 	if l := e.Crossings.Latency; e.Crossings.Count > 0 {
 		r.Loop.LatencyMean, r.Loop.LatencyMedian, r.Loop.LatencyP99, r.Loop.LatencyMax = &l.Mean, &l.Median, &l.P99, &l.Max
 	}
+	if c.KeepMidpoint {
+		s := t.loop.Threshold()
+		r.Loop.ThresholdTravel = &Travel{Present: s.Travel, Lowest: s.Lowest, Highest: s.Highest, Frozen: s.Frozen, Bounded: s.Bounded}
+	}
 	if wall > 0 {
 		r.Loop.TicksPerWallSecond = float64(done) / wall.Seconds()
 	}
@@ -169,7 +183,8 @@ const farOut = 1.5
 
 // asked is what was asked, with what a perfect loop would show.
 func (c Config) asked() Asked {
-	sigma, well := c.sigma(), c.Case().Well()
+	sigma := c.sigma()
+	well := theory.Well{Barrier: c.barrier(), Offset: c.Threshold / sigma}
 	lower, upper := well.Barriers()
 	return Asked{
 		Barrier: c.barrier(), BarrierLower: lower, BarrierUpper: upper,

@@ -10,6 +10,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 	"time"
 
 	"brinkwell/controller"
@@ -120,14 +121,46 @@ func New(c Config) (*Trial, error) {
 	if err != nil {
 		return nil, err
 	}
+	predicted := c.predict()
+	keeper, err := c.keeper(predicted)
+	if err != nil {
+		return nil, err
+	}
 	loop := controller.New(controller.Config{
 		Sensor:     p,
 		Actuator:   p,
 		Comparator: switching.Comparator{Threshold: c.Threshold, HalfBand: c.HalfBand},
+		HoldOff:    int64(math.Ceil(c.HoldOff * c.Rate)),
+		Keeper:     keeper,
 		Truth:      true,
 		First:      -c.warmUpTicks(),
 	})
-	return &Trial{config: c, loop: loop, observer: observer, predicted: c.predict()}, nil
+	return &Trial{config: c, loop: loop, observer: observer, predicted: predicted}, nil
+}
+
+// keeper makes what lets the threshold follow the sensor's zero, nil where it
+// stays.
+func (c Config) keeper(p *Predicted) (*switching.Keeper, error) {
+	if !c.KeepMidpoint {
+		return nil, nil
+	}
+	dwell := math.Max(p.MeanDwellLower, p.MeanDwellUpper)
+	if dwell == 0 {
+		return nil, fmt.Errorf("trial: the threshold cannot follow the midpoint: how long a well keeps the resonator is not known for this bench (%s)", strings.Join(p.OutsideBecause, "; "))
+	}
+	k, err := switching.NewKeeper(switching.ProposeKeeper(switching.Wells{
+		Rate:         c.Rate,
+		Omega0:       c.Oscillator.Omega0,
+		Quality:      c.Oscillator.Quality,
+		Sigma:        c.sigma(),
+		HalfDistance: c.HalfDistance,
+		Threshold:    c.Threshold,
+		Dwell:        dwell,
+	}))
+	if err != nil {
+		return nil, fmt.Errorf("trial: the threshold cannot follow the midpoint: %w", err)
+	}
+	return k, nil
 }
 
 // Progress is told of the ticks done, warm-up included, and their total.

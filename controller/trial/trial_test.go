@@ -263,3 +263,31 @@ func TestPredictionGrid(t *testing.T) {
 		}
 	}
 }
+
+// What was asked does not depend on what is wrong with the sensor; what is
+// expected does: an offset moves the threshold the other way, a gain error
+// scales it.
+func TestSensorErrorsMoveTheExpectedTilt(t *testing.T) {
+	c := demo()
+	c.Threshold = 0.03e-9
+	c.Sensor.Offset, c.Sensor.GainError = 0.05e-9, 0.25
+	b, err := trial.New(c)
+	if err != nil {
+		t.Fatal(err)
+	}
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	r, err := b.Run(ctx, nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	tilt := func(x0 float64) float64 {
+		return 2 * c.Oscillator.Stiffness * c.HalfDistance * x0 / c.Oscillator.KT
+	}
+	if want := tilt(0.03e-9); !(math.Abs(r.Asked.Tilt-want) < 1e-9) {
+		t.Errorf("asked tilt %v, want %v", r.Asked.Tilt, want)
+	}
+	if want := tilt(-0.02e-9 / 1.25); !(math.Abs(r.Predicted.Tilt-want) < 1e-9) {
+		t.Errorf("expected tilt %v, want %v", r.Predicted.Tilt, want)
+	}
+}
