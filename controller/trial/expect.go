@@ -47,6 +47,10 @@ func (c Config) predict() *Predicted {
 	}
 	w0, sigma := c.Oscillator.Omega0, c.sigma()
 	lacks := c.beyondTheory()
+	temperature := p.Temperature
+	if !(temperature > 0) { // far outside the range, which says so
+		temperature = 1
+	}
 	e := &Predicted{
 		Regime:             string(p.Regime),
 		InsideRange:        p.Range.Inside() && len(lacks) == 0,
@@ -55,7 +59,7 @@ func (c Config) predict() *Predicted {
 		Distance:           2 * c.HalfDistance,
 		Stiffness:          c.Oscillator.Stiffness,
 		Tilt:               2 * math.Sqrt(2*c.barrier()) * c.Case().Offset,
-		MeanAbsPosition:    c.Case().Well().MeanAbs(p.Temperature) * sigma,
+		MeanAbsPosition:    c.Case().Well().MeanAbs(temperature) * sigma,
 		KineticTemperature: p.Temperature,
 		UpperShare:         p.UpperOccupation,
 		Count:              p.SwitchRate * w0 * c.Duration,
