@@ -30,6 +30,24 @@ type DelayConfig struct {
 	Shape   Shape   // for a Jitter above 0
 }
 
+// Mean is the mean latency once it is cut, s.
+func (c DelayConfig) Mean() float64 {
+	if c.Jitter == 0 {
+		return c.Latency
+	}
+	low := -c.Latency / c.Jitter // where it is cut, in standard deviations
+	switch c.Shape {
+	case Uniform:
+		half := math.Sqrt(3)
+		return c.Latency + c.Jitter*(math.Max(low, -half)+half)/2
+	case Normal:
+		density := math.Exp(-low*low/2) / math.Sqrt(2*math.Pi)
+		return c.Latency + c.Jitter*density/(math.Erfc(low/math.Sqrt2)/2)
+	default: // an exponential beyond a cut is the same exponential from there on
+		return c.Latency + c.Jitter*(math.Max(low, -1)+1)
+	}
+}
+
 // mostPending bounds how many ticks long a latency may be, and with it the
 // memory for levels on their way.
 const mostPending = 1 << 24
