@@ -175,7 +175,7 @@ func near(t *testing.T, name string, got, se, want, wantSE float64) {
 }
 
 // The demo's bench: a silicon-nitride paddle of 6.5 kHz, 1 MHz loop.
-func demo(b *testing.B, noise, band bool, latency float64) (*controller.Loop, *effect.Observer) {
+func demo(b *testing.B, noise, band bool, latency float64, holdOff int64, keep bool) (*controller.Loop, *effect.Observer) {
 	const boltzmann, temperature, rate = 1.380649e-23, 293.15, 1e6
 	o := motion.Oscillator{Omega0: 2 * math.Pi * 6500, Quality: 35, Stiffness: 0.08, KT: boltzmann * temperature}
 	x1 := math.Sqrt(2 * 4 * o.KT / o.Stiffness)
@@ -201,7 +201,15 @@ func demo(b *testing.B, noise, band bool, latency float64) (*controller.Loop, *e
 	if err != nil {
 		b.Fatal(err)
 	}
-	return controller.New(controller.Config{Sensor: p, Actuator: p, Comparator: comparator, Truth: true}), observer
+	var keeper *switching.Keeper
+	if keep {
+		if keeper, err = switching.NewKeeper(switching.KeeperConfig{TimeConstant: rate, Bound: x1, Unvisited: rate}); err != nil {
+			b.Fatal(err)
+		}
+	}
+	return controller.New(controller.Config{
+		Sensor: p, Actuator: p, Comparator: comparator, HoldOff: holdOff, Keeper: keeper, Truth: true,
+	}), observer
 }
 
 func BenchmarkLoop(b *testing.B) {
@@ -218,7 +226,7 @@ func BenchmarkLoop(b *testing.B) {
 		name := fmt.Sprintf("noise=%s/band=%s/latency=%gus/effect=%s", onOff[c.noise], onOff[c.band], c.latency*1e6, onOff[c.effect])
 		b.Run(name, func(b *testing.B) {
 			const ticks = 1 << 20
-			l, observer := demo(b, c.noise, c.band, c.latency)
+			l, observer := demo(b, c.noise, c.band, c.latency, 0, false)
 			var sinks []trace.Sink
 			if c.effect {
 				sinks = append(sinks, observer)
@@ -226,6 +234,26 @@ func BenchmarkLoop(b *testing.B) {
 			b.ReportAllocs()
 			for b.Loop() {
 				if _, err := l.Run(context.Background(), ticks, sinks...); err != nil {
+					b.Fatal(err)
+				}
+			}
+			b.ReportMetric(float64(b.N)*ticks/1e6/b.Elapsed().Seconds(), "Mticks/s")
+		})
+	}
+}
+
+func BenchmarkHeldLoop(b *testing.B) {
+	for _, c := range []struct {
+		name    string
+		holdOff int64
+		keep    bool
+	}{{"holdoff=off/keep=off", 0, false}, {"holdoff=on/keep=off", 10, false}, {"holdoff=on/keep=on", 10, true}} {
+		b.Run(c.name, func(b *testing.B) {
+			const ticks = 1 << 20
+			l, _ := demo(b, true, true, 1e-6, c.holdOff, c.keep)
+			b.ReportAllocs()
+			for b.Loop() {
+				if _, err := l.Run(context.Background(), ticks); err != nil {
 					b.Fatal(err)
 				}
 			}

@@ -40,6 +40,7 @@ func (d *Decider) Decide(x float64) trace.Level {
 		d.held = d.holdOff - 1
 	}
 	if d.keeper != nil && d.keeper.add(x, d.comparator.Level) {
+		d.keeper.update()
 		d.comparator.Threshold = d.wanted + d.keeper.travel
 	}
 	return d.comparator.Level

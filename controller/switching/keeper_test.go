@@ -48,9 +48,8 @@ func drive(t *testing.T, c switching.KeeperConfig, ticks int, signal func(tick i
 
 func within(got, want, tol float64) bool { return math.Abs(got-want) <= tol }
 
-// A zero that is off is followed as a first-order lag does, whatever the share
-// of either side; a single sum tells it for equal sides: the fresh weight is
-// 1 - exp(-t/T).
+// A zero that is off from the start is followed as by a first-order lag where
+// both sides are visited equally, and in the end for any shares.
 func TestKeeperFollowsAStep(t *testing.T) {
 	const zero = 0.3
 	for _, periods := range []float64{0.5, 1, 3} {
@@ -220,14 +219,14 @@ func TestKeeperConfigErrors(t *testing.T) {
 	}{
 		{func(c *switching.KeeperConfig) { c.ExpectedMidpoint = math.NaN() }, "expected midpoint NaN m"},
 		{func(c *switching.KeeperConfig) { c.ExpectedMidpoint = math.Inf(1) }, "expected midpoint +Inf m"},
-		{func(c *switching.KeeperConfig) { c.TimeConstant = 1023 }, "time constant of 1023 ticks, want at least 1024"},
+		{func(c *switching.KeeperConfig) { c.TimeConstant = 1023 }, "time constant of 1023 ticks, want 1024 to 1e+18"},
 		{func(c *switching.KeeperConfig) { c.TimeConstant = math.NaN() }, "time constant of NaN ticks"},
 		{func(c *switching.KeeperConfig) { c.TimeConstant = math.Inf(1) }, "time constant of +Inf ticks"},
 		{func(c *switching.KeeperConfig) { c.Bound = 0 }, "travel of the threshold 0 m"},
 		{func(c *switching.KeeperConfig) { c.Bound = math.NaN() }, "travel of the threshold NaN m"},
 		{func(c *switching.KeeperConfig) { c.Bound = math.Inf(1) }, "travel of the threshold +Inf m"},
 		{func(c *switching.KeeperConfig) { c.Unvisited = 63 }, "frozen after 63 ticks"},
-		{func(c *switching.KeeperConfig) { c.Unvisited = 5 * c.TimeConstant }, "want 64 to 4 time constants, 262144 ticks"},
+		{func(c *switching.KeeperConfig) { c.Unvisited = 5 * c.TimeConstant }, "want 64 ticks to 4 time constants, 262144 ticks"},
 		{func(c *switching.KeeperConfig) { c.Unvisited = math.NaN() }, "frozen after NaN ticks"},
 	} {
 		config := keeping

@@ -23,6 +23,7 @@ type Report struct {
 	Loop        Loop      `json:"loop"`
 	Checks      Checks    `json:"checks"`
 	Verdict     Verdict   `json:"verdict"`
+	Pictures    *Pictures `json:"pictures,omitempty"` // where they were asked for
 	Settings    any       `json:"settings,omitempty"` // set by whoever read them
 	Seed        uint64    `json:"seed"`
 	Ticks       int64     `json:"ticks"`

@@ -85,6 +85,7 @@ type Trial struct {
 	config    Config
 	loop      *controller.Loop
 	observer  *effect.Observer
+	album     *effect.Album // nil where no pictures are wanted
 	predicted *Predicted
 }
 
@@ -109,15 +110,7 @@ func New(c Config) (*Trial, error) {
 	if err != nil {
 		return nil, err
 	}
-	observer, err := effect.New(effect.Reference{
-		Rate:         c.Rate,
-		Oscillator:   c.Oscillator,
-		HalfDistance: c.HalfDistance,
-		Threshold:    c.Threshold,
-		SensorNoise:  c.SensorNoise(),
-		SensorCorner: c.Sensor.Bandwidth,
-		LostTicks:    c.LostTicks > 0,
-	})
+	observer, err := effect.New(c.reference())
 	if err != nil {
 		return nil, err
 	}
@@ -136,6 +129,27 @@ func New(c Config) (*Trial, error) {
 		First:      -c.warmUpTicks(),
 	})
 	return &Trial{config: c, loop: loop, observer: observer, predicted: predicted}, nil
+}
+
+// reference is what the effect is stated against.
+func (c Config) reference() effect.Reference {
+	return effect.Reference{
+		Rate:         c.Rate,
+		Oscillator:   c.Oscillator,
+		HalfDistance: c.HalfDistance,
+		Threshold:    c.Threshold,
+		SensorNoise:  c.SensorNoise(),
+		SensorCorner: c.Sensor.Bandwidth,
+		LostTicks:    c.LostTicks > 0,
+	}
+}
+
+// WithPictures makes the report hold what pictures show, too. It is called
+// before Run.
+func (t *Trial) WithPictures() error {
+	var err error
+	t.album, err = effect.NewAlbum(t.config.reference())
+	return err
 }
 
 // keeper makes what lets the threshold follow the sensor's zero, nil where it
@@ -183,6 +197,9 @@ func (t *Trial) Run(ctx context.Context, progress Progress, sinks ...trace.Sink)
 	}
 	start := time.Now()
 	all := append([]trace.Sink{t.observer, p}, sinks...)
+	if t.album != nil {
+		all = append(all, t.album)
+	}
 	var done int64
 	if !interrupted {
 		var err error
@@ -196,6 +213,9 @@ func (t *Trial) Run(ctx context.Context, progress Progress, sinks ...trace.Sink)
 	wall := time.Since(start)
 	r := t.report(done, wall)
 	r.Interrupted = interrupted
+	if t.album != nil {
+		r.Pictures = t.pictures(t.album)
+	}
 	return r, nil
 }
 
