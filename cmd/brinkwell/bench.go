@@ -3,6 +3,7 @@ package main
 import (
 	"bytes"
 	"context"
+	"errors"
 	"fmt"
 	"io"
 	"os"
@@ -15,6 +16,7 @@ import (
 	"github.com/spf13/cobra"
 	"golang.org/x/term"
 
+	"brinkwell/controller/trace"
 	"brinkwell/controller/trial"
 	"brinkwell/io/settings"
 	"brinkwell/plant/chain"
@@ -26,6 +28,9 @@ type benchFlags struct {
 	set          []string
 	json         string
 	compare      string
+	out          string
+	record       string
+	reread       string
 	showSettings bool
 	beyondRange  bool
 }
@@ -60,6 +65,9 @@ The exit code is 1 when the realised barrier or temperature is outside
 	}
 	c.Flags().StringArrayVar(&f.set, "set", nil, "set one `KEY=VALUE`, such as loop.latency=3us; may be repeated")
 	c.Flags().StringVar(&f.json, "json", "", "write the report as JSON to `FILE`; - for standard output, the text then goes to standard error")
+	c.Flags().StringVar(&f.out, "out", "", "write report.json, settings.toml and the pictures as SVG and PNG into the folder `DIR`")
+	c.Flags().StringVar(&f.record, "record", "off", "what to record into DIR/recording: `off, every=N or full`")
+	c.Flags().StringVar(&f.reread, "reread", "", "make the report from the full recording in the folder `DIR`, with its own settings")
 	c.Flags().StringVar(&f.compare, "compare", "", "run the same bench at several values of one key, `KEY=V1,V2,...`, and show the differences")
 	c.Flags().BoolVar(&f.showSettings, "show-settings", false, "print the resolved settings as a file that can be used again, and run nothing")
 	c.Flags().BoolVar(&f.beyondRange, "beyond-range", false, "allow a latency above 1/8 of a period, where the loop may oscillate by itself")
@@ -68,40 +76,103 @@ The exit code is 1 when the realised barrier or temperature is outside
 
 // bench runs one bench and prints its report.
 func bench(sh shell, file string, f benchFlags) error {
+	if err := f.check(file); err != nil {
+		return &exitError{exitUsage, err}
+	}
 	src := settings.Sources{File: file, Environ: sh.environ, Set: f.set, BeyondRange: f.beyondRange}
 	ctx, stop := interruptible()
 	defer stop()
-	if f.compare != "" && !f.showSettings {
+	switch {
+	case f.showSettings:
+		return showSettings(sh, src)
+	case f.compare != "":
 		return compareBench(ctx, sh, src, f)
 	}
+	progress, finish := terminalProgress(sh.err)
+	var report trial.Report
+	var s settings.Settings
+	var failed, err error // failed: the report is there, but not all was written
+	if f.reread != "" {
+		report, s, err = reread(ctx, f, progress)
+		finish()
+		tellNotes(sh, report.Notes)
+	} else {
+		report, s, failed, err = runBench(ctx, sh, src, f, progress)
+		finish()
+	}
+	if err != nil {
+		return err
+	}
+	if report.Settings, err = settingsTable(s); err != nil {
+		return &exitError{exitFailed, err}
+	}
+	err = show(sh, f, report, s)
+	if failed != nil {
+		return &exitError{exitWrite, failed}
+	}
+	return err
+}
+
+// check refuses flags that do not go together.
+func (f benchFlags) check(file string) error {
+	switch {
+	case f.compare != "" && (f.out != "" || f.record != "off" || f.reread != ""):
+		return errors.New("--compare shows several benches: it does not go with --out, --record or --reread")
+	case f.reread != "" && (file != "" || len(f.set) > 0 || f.record != "off"):
+		return errors.New("--reread takes the settings of the recording: it does not go with a settings file, --set or --record")
+	}
+	return nil
+}
+
+func showSettings(sh shell, src settings.Sources) error {
 	s, err := settings.Load(src)
 	if err != nil {
 		return &exitError{exitUsage, err}
 	}
-	if f.showSettings {
-		if err := s.WriteTOML(sh.out); err != nil {
-			return &exitError{exitWrite, err}
-		}
-		return nil
+	if err := s.WriteTOML(sh.out); err != nil {
+		return &exitError{exitWrite, err}
+	}
+	return nil
+}
+
+// runBench simulates, and records where that was asked. failed is what went
+// wrong with the recording; the report is there all the same.
+func runBench(ctx context.Context, sh shell, src settings.Sources, f benchFlags, progress trial.Progress) (report trial.Report, s settings.Settings, failed, err error) {
+	if s, err = settings.Load(src); err != nil {
+		return report, s, nil, &exitError{exitUsage, err}
 	}
 	t, err := trial.New(trialConfig(s))
 	if err != nil {
-		return &exitError{exitUsage, err}
+		return report, s, nil, &exitError{exitUsage, err}
+	}
+	if f.out != "" {
+		if err := t.WithPictures(); err != nil {
+			return report, s, nil, &exitError{exitUsage, err}
+		}
+	}
+	w, err := startRecording(f, s)
+	if err != nil {
+		return report, s, nil, err
 	}
 	warnings := append(s.Warnings(), t.Warnings()...)
 	tellNotes(sh, warnings)
-	progress, finish := terminalProgress(sh.err)
-	report, err := t.Run(ctx, progress)
-	finish()
+	var sinks []trace.Sink
+	if w != nil {
+		sinks = append(sinks, w)
+	}
+	report, err = t.Run(ctx, progress, sinks...)
+	if w != nil {
+		failed = errors.Join(err, w.Close())
+		if report.Ticks > 0 { // it is the recording that failed, not the run
+			err = nil
+		}
+	}
 	if err != nil {
-		return &exitError{exitFailed, err}
+		return report, s, nil, &exitError{exitFailed, err}
 	}
-	report.Notes = append(s.Warnings(), report.Notes...)
+	report.Notes = append(append([]string{}, s.Warnings()...), report.Notes...)
 	tellNotes(sh, report.Notes[len(warnings):]) // what only the run showed
-	if report.Settings, err = settingsTable(s); err != nil {
-		return &exitError{exitFailed, err}
-	}
-	return show(sh, f, report)
+	return report, s, failed, nil
 }
 
 // tellNotes says what a person should know beside the report.
@@ -120,7 +191,7 @@ func interruptible() (ctx context.Context, stop func()) {
 }
 
 // show prints a report and writes it where that was asked.
-func show(sh shell, f benchFlags, report trial.Report) error {
+func show(sh shell, f benchFlags, report trial.Report, s settings.Settings) error {
 	text := sh.out
 	if f.json == "-" {
 		text = sh.err
@@ -128,6 +199,11 @@ func show(sh shell, f benchFlags, report trial.Report) error {
 	printed := printReport(text, report, isTerminal(text))
 	if f.json != "" {
 		if err := writeJSON(sh.out, f.json, report); err != nil {
+			return &exitError{exitWrite, err}
+		}
+	}
+	if f.out != "" {
+		if err := writeOut(f.out, report, s); err != nil {
 			return &exitError{exitWrite, err}
 		}
 	}

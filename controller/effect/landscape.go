@@ -73,7 +73,7 @@ const (
 	fitLeast        = 25 // a narrower window is not worth a fit
 	thresholdReach  = 10 // the density at the threshold is extrapolated from 0.2 sigma
 	thresholdWindow = 5  // half the window of the plain density there, 0.1 sigma
-	curveBins       = 10 // a step of the curve, 0.2 sigma
+	curveBins       = 5  // a step of the curve, 0.1 sigma
 	curveReach      = 4  // of the curve beyond the wells, sigma
 )
 
@@ -126,12 +126,13 @@ type reader struct {
 	bottom    [trace.Levels]*window // around each well; nil where it cannot be fitted
 	threshold [trace.Levels]*window // beside the threshold; nil where the side was not visited
 	curve     []int                 // first fine bin of each step of the curve
+	deeper    int                   // well of the whole run; negative while that is not known
 }
 
 func (r *reader) quantities() int { return curve + len(r.curve) }
 
 func newReader(o *Observer, total []float64, measured bool) *reader {
-	r := &reader{ref: o.ref, scale: o.scale, offset: sumsOfTheRun, measured: measured, lagged: &o.lagged}
+	r := &reader{ref: o.ref, scale: o.scale, offset: sumsOfTheRun, measured: measured, lagged: &o.lagged, deeper: -1}
 	if measured {
 		r.offset += momentSums + o.scale.bins
 	}
@@ -160,6 +161,14 @@ func newReader(o *Observer, total []float64, measured bool) *reader {
 		if first := half + k*curveBins; first >= 0 && first+curveBins <= o.scale.bins {
 			r.curve = append(r.curve, first)
 		}
+	}
+	whole := make([]float64, r.quantities())
+	r.read(whole, total)
+	switch up, low := whole[stiffnesses+int(trace.Upper)], whole[stiffnesses+int(trace.Lower)]; {
+	case whole[tilt] < 0 || math.IsNaN(low) && !math.IsNaN(up):
+		r.deeper = int(trace.Upper)
+	case !math.IsNaN(low):
+		r.deeper = int(trace.Lower)
 	}
 	return r
 }
@@ -255,7 +264,8 @@ func (r *reader) readMoments(dst, row, moments, hist []float64) {
 }
 
 // readWells fits the wells and the density beside the threshold, and returns
-// ln(counts a bin) at the bottom of the lowest well found.
+// ln(counts a bin) at the bottom of the deeper well: by the whole run, since
+// its parts would differ about which one that is.
 func (r *reader) readWells(dst, hist []float64) (lowest float64) {
 	sigma := r.ref.sigma()
 	lowest = math.NaN()
@@ -286,7 +296,7 @@ func (r *reader) readWells(dst, hist []float64) (lowest float64) {
 		byParabola[side] = -well[2] * x1 * x1
 		dst[centres+side] = r.scale.threshold + u*sigma
 		dst[stiffnesses+side] = -2 * well[2] * r.ref.Oscillator.Stiffness
-		if !(height <= lowest) {
+		if side == r.deeper || r.deeper < 0 && !(height <= lowest) {
 			lowest = height
 		}
 	}

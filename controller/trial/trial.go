@@ -181,48 +181,84 @@ func (c Config) keeper(p *Predicted) (*switching.Keeper, error) {
 type Progress func(done, total int64)
 
 // Run warms up, measures and reports. When ctx ends it reports what there is,
-// Report.Interrupted set; an error means that there is no report.
+// Report.Interrupted set. A sink that fails is given nothing more, and its
+// error is returned beside the report; any other error means that there is no
+// report.
 func (t *Trial) Run(ctx context.Context, progress Progress, sinks ...trace.Sink) (Report, error) {
 	c := t.config
 	warm, ticks := c.warmUpTicks(), c.Ticks()
-	p := &progressSink{tell: progress, total: warm + ticks}
-	if progress == nil {
-		p.tell = func(int64, int64) {}
-	}
-	interrupted := false
-	if _, err := t.loop.Run(ctx, warm, p); errors.Is(err, context.Canceled) {
-		interrupted = true
-	} else if err != nil {
+	p := newProgressSink(progress, warm+ticks)
+	if _, err := t.loop.Run(ctx, warm, p); err != nil && !errors.Is(err, context.Canceled) {
 		return Report{}, err
 	}
 	start := time.Now()
-	all := append([]trace.Sink{t.observer, p}, sinks...)
+	return t.measure(ctx, start, p, sinks, func(sinks ...trace.Sink) (int64, error) {
+		return t.loop.Run(ctx, ticks, sinks...)
+	})
+}
+
+// Reread makes the report of a run that was recorded: replay gives the
+// recorded blocks to sinks and returns how many ticks they had. What the
+// recording does not hold, the threshold's travel, is missing.
+func (t *Trial) Reread(ctx context.Context, progress Progress, replay func(sinks ...trace.Sink) (int64, error)) (Report, error) {
+	r, err := t.measure(ctx, time.Now(), newProgressSink(progress, t.config.Ticks()), nil, replay)
+	r.Loop.ThresholdTravel = nil
+	return r, err
+}
+
+// measure gives a run's blocks to what makes the report, and makes it.
+func (t *Trial) measure(ctx context.Context, start time.Time, p *progressSink, sinks []trace.Sink, run func(sinks ...trace.Sink) (int64, error)) (Report, error) {
+	all := []trace.Sink{t.observer, p}
 	if t.album != nil {
 		all = append(all, t.album)
 	}
-	var done int64
-	if !interrupted {
-		var err error
-		done, err = t.loop.Run(ctx, ticks, all...)
-		if errors.Is(err, context.Canceled) {
-			interrupted = true
-		} else if err != nil {
-			return Report{}, err
-		}
+	guests := make([]*guest, len(sinks))
+	for i, s := range sinks {
+		guests[i] = &guest{sink: s}
+		all = append(all, guests[i])
 	}
-	wall := time.Since(start)
-	r := t.report(done, wall)
+	done, err := run(all...)
+	interrupted := errors.Is(err, context.Canceled) || ctx.Err() != nil
+	if err != nil && !interrupted {
+		return Report{}, err
+	}
+	r := t.report(done, time.Since(start))
 	r.Interrupted = interrupted
 	if t.album != nil {
 		r.Pictures = t.pictures(t.album)
 	}
+	for _, g := range guests {
+		if g.err != nil {
+			return r, g.err
+		}
+	}
 	return r, nil
+}
+
+// A guest is a sink whose failure does not end the run.
+type guest struct {
+	sink trace.Sink
+	err  error
+}
+
+func (g *guest) Take(b *trace.Block) error {
+	if g.err == nil {
+		g.err = g.sink.Take(b)
+	}
+	return nil
 }
 
 // progressSink tells how far a run is.
 type progressSink struct {
 	tell        Progress
 	done, total int64
+}
+
+func newProgressSink(tell Progress, total int64) *progressSink {
+	if tell == nil {
+		tell = func(int64, int64) {}
+	}
+	return &progressSink{tell: tell, total: total}
 }
 
 func (p *progressSink) Take(b *trace.Block) error {

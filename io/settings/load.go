@@ -16,6 +16,7 @@ import (
 // those before it. The zero value gives the demo itself.
 type Sources struct {
 	File    string   // path of a TOML file; "": none
+	Text    string   // content of a file that is not on disk, called File in errors; "": File is read
 	Environ []string // NAME=VALUE, as os.Environ gives; BRINKWELL_SET_LOOP_HALF_BAND sets loop.half_band
 	Set     []string // key=value, the value unquoted
 
@@ -28,7 +29,9 @@ type Sources struct {
 // right. Keys without a value in any layer are resolved as their comments say.
 func Load(src Sources) (Settings, error) {
 	var data []byte
-	if src.File != "" {
+	if src.Text != "" {
+		data = []byte(src.Text)
+	} else if src.File != "" {
 		var err error
 		if data, err = readFile(src.File); err != nil {
 			return Settings{}, err
