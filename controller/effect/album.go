@@ -20,7 +20,6 @@ type Album struct {
 	transitions transitions
 	row         []float64 // for transitions, which book there
 	dwells      [trace.Levels]*hdrhistogram.Histogram
-	departures  [trace.Levels]float64
 	over        []int64
 	beyond      int64
 	welch       welch
