@@ -41,8 +41,10 @@ func TestVanishingImperfections(t *testing.T) {
 	if changes < 10 {
 		t.Fatalf("%d changes of level, want enough to compare", changes)
 	}
+	// The work of a lagging centre is taken along the expected path within the
+	// tick, the event's position is drawn about it: some 1e-3 kT apart, at random.
 	for i, e := range b.Acted(nil) {
-		if want := -2 * plain.Oscillator.Stiffness * plain.Centres[trace.Upper] * e.Level.Sign() * e.Position; !(math.Abs(e.Work-want) < 1e-4*plain.Oscillator.KT) {
+		if want := -2 * plain.Oscillator.Stiffness * plain.Centres[trace.Upper] * e.Level.Sign() * e.Position; !(math.Abs(e.Work-want) < 5e-3*plain.Oscillator.KT) {
 			t.Errorf("event %d: work %v, want %v", i, e.Work, want)
 		}
 	}

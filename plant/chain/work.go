@@ -10,7 +10,8 @@ import (
 // potential continuous at x0 whatever the centre c, dU/dc = -k·(x - x0), and
 // with the centre's distance e from its target, c′ = -e/τ, the work of a tick
 // is k·∫(x - x0)·e/τ dt. The path is the cubic through position and velocity
-// at both ends of the tick (Hermite's), e an exponential.
+// at both ends of the tick (Hermite's), e an exponential; what the thermal
+// force adds within the tick averages out over the actuations.
 type work struct {
 	ratio  float64    // tick over lag
 	whole  [5]float64 // of a tick: weights of x, v·dt at the start and at the end, and of -x0
